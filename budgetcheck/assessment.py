@@ -1,0 +1,340 @@
+"""The assessment of a plan: the pipeline from a table to a verdict as one function, and its result."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from pathlib import Path
+from typing import TYPE_CHECKING, Any
+
+import numpy as np
+
+from . import assumptions as assumptions_module
+from .assumptions import Assumption, Assumptions
+from .audit import audit
+from .bounded import Bounded
+from .budget import Account, Budget, PresentValue, Reach, budget, discount
+from .conditions import Conditions, conditions
+from .conventions import Conventions, settle
+from .estimates import TailEstimate, reconstruction, tail
+from .findings import Finding, InputRefused, NotAffordable, Severity, note, stop, warn, worst_first
+from .ledger import Ledger, keep
+from .paths import overshoots
+from .plan import OutOfRange, Plan, build, rows_of
+from .rates import Rate
+from .streams import Streams
+from .table import Table, from_frame, read_csv
+from .verdict import Decision, Errors, decide
+from .version import VERSION
+from .wealth import WealthPath, wealth_path
+from .weights import RowWeights, row_weights
+
+if TYPE_CHECKING:
+    import pandas as pd
+
+
+@dataclass(frozen=True, kw_only=True)
+class Slack:
+    """Lifetime resources less uses. per_effective_unit: money per unit of human capital; per_household: money, both at t = 0;
+    share_of_resources; consumption_scale: the factor on all consumption that exhausts the budget; level_per_year: slack as a level
+    yearly amount per household over the plan. None where infinite or without meaning."""
+
+    per_effective_unit: Bounded | None
+    per_household: Bounded | None
+    share_of_resources: float | None
+    consumption_scale: float | None
+    level_per_year: float | None
+
+
+@dataclass(frozen=True, kw_only=True)
+class PresentValues:
+    """Per unit of human capital in `unit` and per household in `household`, by column and by role."""
+
+    unit: Account
+    household: Account
+
+
+@dataclass(frozen=True, kw_only=True)
+class Tail:
+    """kind: how the plan goes on after its last row; shares of the present values that come from there; estimate: of the error of an
+    undeclared tail."""
+
+    kind: str
+    share_of_income: float | None
+    share_of_consumption: float | None
+    estimate: TailEstimate
+
+
+@dataclass(frozen=True, kw_only=True)
+class Span:
+    """What was read: file, number of rows, first and last date, and the end of the plan, as words; timing and path in words."""
+
+    file: str
+    rows: int
+    first: str
+    last: str
+    end: str
+    reading: str
+
+
+@dataclass(frozen=True, kw_only=True, eq=False)
+class Assessment:
+    """The verdict on a plan and all it rests on; the names are those of the JSON report."""
+
+    version: str
+    input_sha256: str
+    span: Span
+    verdict: str
+    reason: str
+    would_decide: str | None
+    slack: Slack
+    present_values: PresentValues
+    routes_differ: Bounded
+    error: Errors
+    decision: Decision
+    conditions: Conditions
+    wealth_path: WealthPath
+    weights: RowWeights
+    tail: Tail
+    assumptions: tuple[Assumption, ...]
+    findings: tuple[Finding, ...]
+    date: Any
+
+    def require(self, *, transversality: bool = False) -> Assessment:
+        """The assessment itself, for use in a test suite. Raises NotAffordable, with the report, unless the verdict is PASS and, if
+        asked for, transversality holds."""
+        from .report.terminal import render
+
+        wanted = self.verdict == "PASS" and (not transversality or self.conditions.transversality.holds is True)
+        if not wanted:
+            raise NotAffordable(render(self, width=100))
+        return self
+
+
+def assess(
+    plan: pd.DataFrame | str | Path,
+    assumptions: assumptions_module.Source = None,
+    *,
+    options: dict[str, str] | None = None,
+) -> Assessment:
+    """Decide whether a plan is affordable over its whole life.
+
+    plan: a DataFrame, or the path of a CSV file ("-": standard input). assumptions: the path of a TOML file or a mapping in its
+    shape; by default the file beside the plan with the ending .toml, if there is one. options: figures by option name that
+    override it. Raises InputRefused, with every fault found, where the input cannot be assessed.
+    """
+    ledger, stated = _read(plan, assumptions, options)
+    conventions, found = _settled(ledger, stated)
+    built, more = _built(ledger, conventions)
+    found = [*stated.findings, *found, *more]
+    try:
+        account = budget(built)
+    except OutOfRange as error:
+        raise InputRefused([*found, stop("out-of-range", f"{error}.", file=ledger.file)]) from error
+    return _assessed(ledger, account, found)
+
+
+def _read(
+    plan: pd.DataFrame | str | Path, source: assumptions_module.Source, options: dict[str, str] | None
+) -> tuple[Ledger, Assumptions]:
+    """Table and assumptions; the faults of both are reported together."""
+    faults: list[Finding] = []
+    table: Table | None = None
+    stated: Assumptions | None = None
+    try:
+        table = read_csv(plan) if isinstance(plan, (str, Path)) else from_frame(plan)
+    except InputRefused as refused:
+        faults.extend(refused.findings)
+    try:
+        stated = assumptions_module.read(_beside(plan) if source is None else source, options)
+        faults.extend(finding for finding in stated.findings if finding.severity is Severity.STOP)
+    except InputRefused as refused:
+        faults.extend(refused.findings)
+    if table is not None and stated is not None:
+        try:
+            ledger = keep(table, stated)
+            if not faults:
+                return ledger, stated
+        except InputRefused as refused:
+            faults.extend(refused.findings)
+    raise InputRefused(faults)
+
+
+def _beside(plan: object) -> Path | None:
+    """The assumptions file with the plan's own name, if there is one."""
+    if not isinstance(plan, (str, Path)) or str(plan) == "-":
+        return None
+    try:
+        beside = Path(plan).with_suffix(".toml")
+        return beside if beside.is_file() else None
+    except (OSError, ValueError):
+        return None
+
+
+def _settled(ledger: Ledger, stated: Assumptions) -> tuple[Conventions, list[Finding]]:
+    faults: list[Finding] = []
+    found: list[Finding] = []
+    conventions = None
+    try:
+        conventions = settle(ledger, stated)
+    except InputRefused as refused:
+        faults.extend(refused.findings)
+    try:
+        found.extend(audit(ledger, stated))
+    except InputRefused as refused:
+        faults.extend(refused.findings)
+    if conventions is None or faults:
+        raise InputRefused(faults)
+    return conventions, found
+
+
+def _built(ledger: Ledger, conventions: Conventions) -> tuple[Plan, list[Finding]]:
+    """The plan; a smooth path that nobody declared gives way to a linear one where it leaves the range of the rows."""
+    rows = rows_of(ledger, conventions)
+    plan = build(rows, conventions, conventions.path)
+    found: list[Finding] = []
+    if plan.path == "smooth" and not conventions.path_declared:
+        columns = [*rows.amounts, *ledger.of_role("r")]
+        for column in columns:
+            values = column.values[None]
+            wild = overshoots(values, plan.amounts_path.coefficients(values, 0.0).p)[0]
+            if wild.any():
+                name = column.header if hasattr(column, "header") else column.name
+                row = ledger.lines[int(np.argmax(wild))]
+                message = (
+                    "a smooth path through the rows would leave their range after this row, so that straight lines are used; "
+                    'declare path = "smooth", "linear" or "step" under [amounts].'
+                )
+                found.append(note("path", message, file=ledger.file, row=row, column=name))
+        if found:
+            plan = build(rows, conventions, "linear")
+    if plan.path == "step":
+        message = "under a step path the last row has no width: its amounts only say what follows it."
+        if not conventions.perpetual:
+            message = "under a step path the last row has no width: its amounts do not enter the plan."
+        found.append(note("path", message, file=ledger.file, row=ledger.lines[-1]))
+    return plan, found
+
+
+def _assessed(ledger: Ledger, computed: Budget, found: list[Finding]) -> Assessment:
+    plan, unit = computed.plan, computed.unit.account
+    open_path, open_tail = reconstruction(computed), tail(computed)
+    path = wealth_path(computed, open_path)
+    weights = row_weights(computed, path)
+    errors = Errors(
+        numerical=unit.slack.bound,
+        reconstruction=open_path,
+        tail=open_tail.error,
+        input_rounding=weights.input_rounding,
+    )
+    decision = decide(plan, unit, errors, open_tail)
+    found = [*found, *_computed_findings(ledger, plan, weights, decision)]
+    return Assessment(
+        version=VERSION,
+        input_sha256=ledger.sha256,
+        span=_span(ledger, plan),
+        verdict=decision.verdict,
+        reason=decision.reason,
+        would_decide=decision.would_decide,
+        slack=_slack(computed, decision),
+        present_values=PresentValues(unit=unit, household=computed.household.account),
+        routes_differ=_agreement(computed),
+        error=errors,
+        decision=decision,
+        conditions=conditions(plan, unit, decision),
+        wealth_path=path,
+        weights=weights,
+        tail=_tail(plan, unit, open_tail),
+        assumptions=plan.conventions.entries,
+        findings=worst_first(found),
+        date=ledger.timeline.date,
+    )
+
+
+def _agreement(computed: Budget) -> Bounded:
+    """Slack per household divided by A(0)L(0)/H, less slack per unit: zero within its bound, or the program is at fault."""
+    scaled = computed.household.account.slack.times(1.0 / computed.plan.scale.value, 3.0 * 2.0**-53)
+    difference = scaled - computed.unit.account.slack
+    if not abs(difference.value) <= difference.bound:
+        raise ArithmeticError(f"the two routes to slack differ by {difference.value:g}, more than the proved {difference.bound:g}")
+    return difference
+
+
+def _slack(computed: Budget, decision: Decision) -> Slack:
+    if not decision.finite:
+        return Slack(
+            per_effective_unit=None, per_household=None, share_of_resources=None, consumption_scale=None, level_per_year=None
+        )
+    unit, household = computed.unit.account, computed.household.account
+    consumed = unit.consumption.whole.value
+    available = unit.slack.value + consumed
+    annuity = _annuity(computed)
+    finite = unit.consumption.reach is Reach.FINITE and consumed > 0.0
+    return Slack(
+        per_effective_unit=unit.slack,
+        per_household=household.slack,
+        share_of_resources=unit.slack.value / decision.scale if decision.scale > 0.0 else None,
+        consumption_scale=available / consumed if finite else None,
+        level_per_year=household.slack.value / annuity if annuity else None,
+    )
+
+
+def _annuity(computed: Budget) -> float | None:
+    """Present value of one unit of money a year, real, over the plan; None where a perpetual one has none."""
+    plan = computed.plan
+    pieces = len(plan.mesh.lengths)
+    none = np.zeros((1, pieces))
+    one = Streams(p=np.ones((1, pieces, 1)), q=none[:, :, None], p_error=none, q_error=none)
+    interest = discount(plan, Rate())
+    value = float(one.restated(interest, sign=-1).integral(plan.mesh.lengths).value.sum())
+    if not plan.conventions.perpetual:
+        return value
+    rate = plan.interest.beyond
+    if rate.sign != 1:
+        return None
+    return value + float(np.exp(-interest.at[-1])) / rate.value if interest is not None else None
+
+
+def _tail(plan: Plan, account: Account, estimate: TailEstimate) -> Tail:
+    if not plan.conventions.perpetual:
+        return Tail(kind="none", share_of_income=None, share_of_consumption=None, estimate=estimate)
+    kind = next(str(entry.value) for entry in plan.conventions.entries if entry.key == "horizon.tail")
+
+    def share(side: PresentValue) -> float | None:
+        whole = side.whole.value
+        return side.tail.value / whole if side.reach is Reach.FINITE and whole != 0.0 else None
+
+    return Tail(
+        kind=kind, share_of_income=share(account.income), share_of_consumption=share(account.consumption), estimate=estimate
+    )
+
+
+def _span(ledger: Ledger, plan: Plan) -> Span:
+    c, date = plan.conventions, ledger.timeline.date
+    reading = f"{c.timing} totals" if c.timing == "spread" else f"lump sums {c.timing}"
+    if not c.periods:
+        reading = f"yearly rates, {plan.path} path between rows"
+    end = float(plan.mesh.breaks[-1])
+    return Span(
+        file=ledger.file,
+        rows=len(ledger.lines),
+        first=date(0.0),
+        last=date(float(ledger.timeline.times[-1])),
+        end="perpetual" if c.perpetual else f"ends at {date(end)}",
+        reading=reading,
+    )
+
+
+def _computed_findings(ledger: Ledger, plan: Plan, weights: RowWeights, decision: Decision) -> list[Finding]:
+    """Findings that only the computation shows."""
+    found = []
+    if decision.warning is not None:
+        found.append(warn("net-discount", decision.warning, file=ledger.file))
+    negative = np.argwhere(weights.amounts < 0.0)
+    if len(negative):
+        column, row = int(negative[0][0]), int(negative[0][1])
+        message = (
+            f"the smooth path gives {len(negative)} cells a negative weight, first here: more in the cell lowers its present value."
+        )
+        name = plan.rows.amounts[column].name
+        found.append(note("negative-weight", message, file=ledger.file, row=ledger.lines[row], column=name))
+    return found

@@ -1,0 +1,38 @@
+"""A number that travels with a proved bound on its error."""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass
+
+from .quadrature import SAFETY, UNIT, Floats
+
+
+@dataclass(frozen=True)
+class Bounded:
+    """|value − exact| ≤ bound."""
+
+    value: float
+    bound: float = 0.0
+
+    def __add__(self, other: Bounded) -> Bounded:
+        value = self.value + other.value
+        return Bounded(value, (self.bound + other.bound + UNIT * abs(value)) * SAFETY)
+
+    def __sub__(self, other: Bounded) -> Bounded:
+        return self + Bounded(-other.value, other.bound)
+
+    def times(self, factor: float, factor_error: float = 0.0) -> Bounded:
+        """The product with a factor known to a relative error."""
+        value = self.value * factor
+        bound = self.bound * abs(factor) * (1.0 + factor_error) + abs(value) * (factor_error + UNIT)
+        return Bounded(value, bound * SAFETY)
+
+
+ZERO = Bounded(0.0)
+
+
+def total(values: Floats, bounds: Floats) -> Bounded:
+    """The sum of all values, rounded once (math.fsum), with the sum of their bounds."""
+    value = math.fsum(values.ravel().tolist())
+    return Bounded(value, (float(bounds.sum()) * SAFETY + UNIT * abs(value)) * SAFETY)
