@@ -12,7 +12,7 @@ from . import assumptions as assumptions_module
 from .assumptions import Assumption, Assumptions
 from .audit import audit
 from .bounded import Bounded
-from .budget import Account, Budget, PresentValue, Reach, budget, discount
+from .budget import Account, Budget, PresentValue, Reach, budget
 from .conditions import Conditions, conditions
 from .conventions import Conventions, settle
 from .estimates import TailEstimate, reconstruction, tail
@@ -20,7 +20,6 @@ from .findings import Finding, InputRefused, NotAffordable, Severity, note, stop
 from .ledger import Ledger, keep
 from .paths import overshoots
 from .plan import OutOfRange, Plan, build, rows_of
-from .rates import Rate
 from .streams import Streams
 from .table import Table, from_frame, read_csv
 from .verdict import Decision, Errors, decide
@@ -193,18 +192,17 @@ def _built(ledger: Ledger, conventions: Conventions) -> tuple[Plan, list[Finding
     plan = build(rows, conventions, conventions.path)
     found: list[Finding] = []
     if plan.path == "smooth" and not conventions.path_declared:
-        columns = [*rows.amounts, *ledger.of_role("r")]
-        for column in columns:
-            values = column.values[None]
-            wild = overshoots(values, plan.amounts_path.coefficients(values, 0.0).p)[0]
-            if wild.any():
-                name = column.header if hasattr(column, "header") else column.name
-                row = ledger.lines[int(np.argmax(wild))]
+        columns = [column for column in ledger.columns if column.role != "ignore"]
+        values = np.stack([column.values for column in columns])
+        wild = overshoots(values, plan.amounts_path.coefficients(values, 0.0).p)
+        for column, where in zip(columns, wild, strict=True):
+            if where.any():
+                row = ledger.lines[int(np.argmax(where))]
                 message = (
                     "a smooth path through the rows would leave their range after this row, so that straight lines are used; "
                     'declare path = "smooth", "linear" or "step" under [amounts].'
                 )
-                found.append(note("path", message, file=ledger.file, row=row, column=name))
+                found.append(note("path", message, file=ledger.file, row=row, column=column.header))
         if found:
             plan = build(rows, conventions, "linear")
     if plan.path == "step":
@@ -255,7 +253,9 @@ def _agreement(computed: Budget) -> Bounded:
     scaled = computed.household.account.slack.times(1.0 / computed.plan.scale.value, 3.0 * 2.0**-53)
     difference = scaled - computed.unit.account.slack
     if not abs(difference.value) <= difference.bound:
-        raise ArithmeticError(f"the two routes to slack differ by {difference.value:g}, more than the proved {difference.bound:g}")
+        raise ArithmeticError(
+            f"the two routes to slack differ by {difference.value:g}, more than the proved {difference.bound:g}"
+        )
     return difference
 
 
@@ -284,7 +284,7 @@ def _annuity(computed: Budget) -> float | None:
     pieces = len(plan.mesh.lengths)
     none = np.zeros((1, pieces))
     one = Streams(p=np.ones((1, pieces, 1)), q=none[:, :, None], p_error=none, q_error=none)
-    interest = discount(plan, Rate())
+    interest = computed.household.discount
     value = float(one.restated(interest, sign=-1).integral(plan.mesh.lengths).value.sum())
     if not plan.conventions.perpetual:
         return value
@@ -332,9 +332,7 @@ def _computed_findings(ledger: Ledger, plan: Plan, weights: RowWeights, decision
     negative = np.argwhere(weights.amounts < 0.0)
     if len(negative):
         column, row = int(negative[0][0]), int(negative[0][1])
-        message = (
-            f"the smooth path gives {len(negative)} cells a negative weight, first here: more in the cell lowers its present value."
-        )
+        message = f"the smooth path gives {len(negative)} cells a negative weight, first here: more in the cell lowers its present value."
         name = plan.rows.amounts[column].name
         found.append(note("negative-weight", message, file=ledger.file, row=ledger.lines[row], column=name))
     return found

@@ -50,9 +50,9 @@ def _cells(ledger: Ledger, column: LedgerColumn, wrong: np.ndarray, rule: str, m
 def _sign(ledger: Ledger, _: Assumptions) -> Iterator[Finding]:
     """Negative consumption is a sign convention (outflows as negatives), never a plan; negative income is unusual."""
     for column in ledger.of_role("consumption"):
-        negative = column.values < 0
-        hint = "write consumption as positive amounts." if negative.all() else "write the amount consumed, 0 or more."
-        yield from _cells(ledger, column, negative, "sign", "consumption is negative;", hint)
+        wrong = column.values < 0
+        hint = "write consumption as positive amounts." if wrong.all() else "write the amount consumed, 0 or more."
+        yield from _cells(ledger, column, wrong, "sign", "consumption is negative;", hint)
     for column in ledger.of_role("income"):
         negative = np.flatnonzero(column.values < 0)
         if len(negative):

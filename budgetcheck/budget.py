@@ -18,8 +18,6 @@ import math
 from dataclasses import dataclass
 from enum import StrEnum
 
-import numpy as np
-
 from .bounded import ZERO, Bounded, total
 from .plan import LARGEST_EXPONENT, OutOfRange, Plan
 from .quadrature import EXP_ERROR, MOST_HALVINGS, SAFETY, UNIT, Floats, Integral
@@ -227,9 +225,7 @@ def tail_values(
     return result
 
 
-def _last_period(
-    mesh: Mesh, integral: Integral, lumps: tuple[Floats, Floats] | None, streams: Streams, k: int
-) -> Bounded:
+def _last_period(mesh: Mesh, integral: Integral, lumps: tuple[Floats, Floats] | None, streams: Streams, k: int) -> Bounded:
     """The present value of stream k over the last row's period."""
     last = mesh.interval == mesh.interval[-1]
     base = total(integral.value[k, last], integral.bound[k, last])

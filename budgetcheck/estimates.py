@@ -1,7 +1,8 @@
-"""What cannot be proved but can be estimated: the error of reconstructing a path from its rows, and that of an undeclared tail.
+"""What cannot be proved but can be estimated: the error of reconstructing a path from its rows, and that of an
+undeclared tail.
 
-Reconstruction: a continuous plan is known only at its rows. The change of slack when every second row is left out is larger than
-the error that remains, by about the order of the interpolation (16 for a smooth path), wherever the rows are fine enough at all.
+Reconstruction: a continuous plan is known only at its rows. The change of slack when every second row is left out is larger
+than the error that remains, by about the order of the interpolation (16 for a smooth path), wherever the rows are fine enough at all.
 
 Tail: where the author declared none, balanced growth is assumed after the last row although the last rows may still move.
 Twice the difference between balanced growth and a converging tail fitted to the last rows is taken as the error.
@@ -13,10 +14,11 @@ import math
 from dataclasses import dataclass
 
 import numpy as np
+from numpy.typing import NDArray
 
 from .budget import Budget, slack_only
 from .plan import OutOfRange, Plan, build
-from .quadrature import UNIT, Floats
+from .quadrature import UNIT, Floats, Mask
 from .rates import Rate
 from .streams import Exponent, Mesh, RatePath, Streams
 
@@ -36,11 +38,14 @@ MOST_IN_WINDOW = 200
 LARGEST_MISFIT = 0.1
 """A fit leaves at most this share (root mean square) of the movement it describes; otherwise the rows do not converge."""
 
-SPEEDS = np.geomspace(1e-3, 60.0, 60)
+SPEEDS = np.geomspace(1e-3, 60.0, 40)
 """Speeds tried, in units of 1/window: from a straight line to a jump."""
 
-STEPS_PER_TIME_CONSTANT = 8.0
-"""Rows a time constant of the fitted tail: cubic pieces then follow it to 1e−6 of what still moves."""
+STEPS_PER_TIME_CONSTANT = 4.0
+"""Rows a time constant of the fitted tail: cubic pieces then follow it to 1e−5 of what still moves."""
+
+SETTLED = 32.0
+"""Time constants after which what still moves is below rounding: e^−32 is 1e−14."""
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -81,8 +86,8 @@ def reconstruction(budget: Budget) -> float:
 
 @dataclass(frozen=True, eq=False)
 class _LastRows:
-    """The window at the end: s (j,) years relative to the last row, ≤ 0; values (3, j): income, consumption, r; noise (3,): what
-    printing or floating point may have changed in them."""
+    """The window at the end: s (j,) years relative to the last row, ≤ 0; values (3, j): income, consumption, r; noise (3,):
+    what printing or floating point may have changed in them."""
 
     s: Floats
     values: Floats
@@ -141,10 +146,10 @@ def _last_rows(plan: Plan) -> _LastRows:
     return _LastRows(s=times[kept] - times[-1], values=values, noise=noise)
 
 
-def _noise(values: Floats, half_units: Floats | None, kept: Floats) -> float:
+def _noise(values: Floats, half_units: Floats | None, kept: NDArray[np.intp]) -> float:
     """A unit in the last printed digit, or a few roundings."""
     floor = 16.0 * UNIT * float(np.max(np.abs(values)))
-    return floor if half_units is None else max(floor, 2.0 * float(np.max(half_units[kept])))  # type: ignore[index]
+    return floor if half_units is None else max(floor, 2.0 * float(np.max(half_units[kept])))
 
 
 def _discount_at_end(budget: Budget) -> float:
@@ -166,13 +171,13 @@ def _frozen(rows: _LastRows, plan: Plan) -> float:
     return float((income + consumption) / decay + net / decay**2 * interest)
 
 
-def _fit(rows: _LastRows, moving: Floats) -> ConvergingFit | None:
+def _fit(rows: _LastRows, moving: Mask) -> ConvergingFit | None:
     """Least squares through the last row with one speed for all series that move, each scaled by its movement."""
     window = -float(rows.s[0])
     deviation = rows.values - rows.values[:, -1:]
     scaled = deviation[moving] / rows.movement[moving][:, None]
     speeds = SPEEDS / window
-    for _ in range(4):
+    for _ in range(3):
         misfit, _ = _misfit(scaled, rows.s, speeds)
         best = int(np.argmin(misfit))
         if best == 0 and speeds[0] <= SPEEDS[0] / window * 1.0001:
@@ -186,9 +191,7 @@ def _fit(rows: _LastRows, moving: Floats) -> ConvergingFit | None:
         return None
     departures = np.where(moving, slopes[0], 0.0)
     long_run = rows.values[:, -1] - departures
-    return ConvergingFit(
-        speed=speed, income=float(long_run[0]), consumption=float(long_run[1]), interest=float(long_run[2])
-    )
+    return ConvergingFit(speed=speed, income=float(long_run[0]), consumption=float(long_run[1]), interest=float(long_run[2]))
 
 
 def _misfit(deviation: Floats, s: Floats, speeds: Floats) -> tuple[Floats, Floats]:
@@ -224,7 +227,7 @@ def _converging(fit: ConvergingFit, departure: Floats, settled: float) -> float:
     Both parts of the flow, the settled one and the fading one, are members of the family; the rate is carried by cubic pieces
     (Hermite, exact at both ends) until what still moves is below rounding, and is constant from there on.
     """
-    end = 40.0 / (fit.speed + settled)
+    end = SETTLED / (fit.speed + settled)
     pieces = max(8, math.ceil(end * fit.speed * STEPS_PER_TIME_CONSTANT))
     breaks = np.linspace(0.0, end, pieces + 1)
     lengths = np.diff(breaks)

@@ -5,7 +5,8 @@ linearly (step, linear, smooth) an integral of the path against any kernel is Σ
 weights from the kernel's moments ∫ z^j·kernel over the intervals. For the geometric path they are the derivatives with
 respect to the values.
 
-Arrays carry the columns of one table first, then rows or intervals: values (c, n), coefficients (c, n − 1, d + 1).
+Arrays carry the columns of one table first, then rows or intervals: values (c, n), coefficients (c, n − 1, d + 1). The relative
+error of the values is one number or, by column, (c, 1).
 """
 
 from __future__ import annotations
@@ -51,14 +52,14 @@ class Step:
 
     lengths: Floats
 
-    def coefficients(self, values: Floats, relative_error: float) -> Coefficients:
+    def coefficients(self, values: Floats, relative_error: Floats | float) -> Coefficients:
         """values (c, n) or (c, n − 1); the value of a last row without a period is not used."""
         kept = values[:, : len(self.lengths)]
         return _without_exponent(kept[:, :, None], relative_error * np.abs(kept))
 
     def row_weights(self, moments: Floats) -> Floats:
         """moments (k, m), k ≥ 1, the integrals of z^j·kernel. Returns (m,)."""
-        return moments[0]
+        return np.asarray(moments[0])
 
 
 @dataclass(frozen=True, eq=False)
@@ -67,7 +68,7 @@ class Linear:
 
     lengths: Floats
 
-    def coefficients(self, values: Floats, relative_error: float) -> Coefficients:
+    def coefficients(self, values: Floats, relative_error: Floats | float) -> Coefficients:
         """values (c, n). The error is that of reading, relative_error·|y|, and one rounding."""
         left, right = values[:, :-1], values[:, 1:]
         p = np.stack([(left + right) / 2.0, (right - left) / 2.0], axis=-1)
@@ -88,7 +89,7 @@ class Geometric:
 
     lengths: Floats
 
-    def coefficients(self, values: Floats, relative_error: float) -> Coefficients:
+    def coefficients(self, values: Floats, relative_error: Floats | float) -> Coefficients:
         """values (c, n), all positive. f is sqrt(y_i y_{i+1})·exp(z·ln(y_{i+1}/y_i)/2), which keeps q small."""
         left, right = values[:, :-1], values[:, 1:]
         # the square root of each factor, not of the product, which could overflow
@@ -160,7 +161,7 @@ class Smooth:
         right[:, -1] -= right_end
         return right, left_end, right_end
 
-    def _slopes(self, values: Floats, relative_error: float) -> tuple[Floats, Floats]:
+    def _slopes(self, values: Floats, relative_error: Floats | float) -> tuple[Floats, Floats]:
         """Slopes at the rows and proved bounds on their error, both (c, n), for n ≥ 4 rows."""
         h = self.lengths
         d = np.diff(values, axis=1) / h
@@ -216,7 +217,7 @@ class Smooth:
             candidate = np.where(short.any(axis=1, keepdims=True), np.broadcast_to(worst, candidate.shape), candidate)
         return np.asarray(candidate)
 
-    def coefficients(self, values: Floats, relative_error: float) -> Coefficients:
+    def coefficients(self, values: Floats, relative_error: Floats | float) -> Coefficients:
         """values (c, n). p is the Hermite form of the spline on each interval; q is zero."""
         rows = values.shape[1]
         if rows == 2:
@@ -232,7 +233,7 @@ class Smooth:
         error += _DERIVATIVE_BASIS_PEAK * half * (slope_errors[:, :-1] + slope_errors[:, 1:])
         return _without_exponent(p, error * SAFETY)
 
-    def _parabola(self, values: Floats, relative_error: float) -> Coefficients:
+    def _parabola(self, values: Floats, relative_error: Floats | float) -> Coefficients:
         """The parabola through three rows, from Newton's divided differences."""
         h = self.lengths
         d = np.diff(values, axis=1) / h
@@ -292,7 +293,8 @@ Path = Step | Linear | Geometric | Smooth
 
 def path_named(name: str, lengths: Floats) -> Path:
     """The path of that name over intervals of those lengths (years), (m,)."""
-    return {"step": Step, "linear": Linear, "geometric": Geometric, "smooth": Smooth}[name](lengths)
+    paths: dict[str, type[Path]] = {"step": Step, "linear": Linear, "geometric": Geometric, "smooth": Smooth}
+    return paths[name](lengths)
 
 
 def overshoots(values: Floats, p: Floats) -> Mask:

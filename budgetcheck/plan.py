@@ -21,7 +21,7 @@ from .bounded import Bounded
 from .conventions import Conventions
 from .findings import BudgetcheckError
 from .ledger import Ledger
-from .paths import Geometric, Linear, Path, Step, path_named
+from .paths import Coefficients, Geometric, Linear, Path, Step, path_named
 from .quadrature import UNIT, Floats, Mask
 from .rates import CONVERSIONS, ZERO, Rate
 from .streams import Exponent, Lumps, Mesh, RatePath, Streams, Tail
@@ -149,13 +149,13 @@ def build(rows: Rows, conventions: Conventions, path: str) -> Plan:
     lengths = rows.timeline.period_lengths() if c.periods else rows.timeline.lengths
     mesh = _mesh(rows.timeline, lengths, halves=c.timing == "at mid-period")
     amounts_path: Path = Step(lengths) if c.periods else path_named(path, lengths)
-    interest = _interest(rows, c, amounts_path, mesh)
+    flows = _Flows(c, rows, amounts_path, mesh)
+    streams, rates = flows.streams()
+    interest = _interest(rows, c, rates, mesh)
     growth = c.g + c.n
     net = interest.beyond - growth
     decay = {"income": net - c.income_growth, "consumption": net - c.consumption_growth}
     exponent, factor = Exponent.constant(_basis_rate(c, c.basis), mesh), float(_basis_factor(c, c.basis))
-    flows = _Flows(c, rows, amounts_path, mesh)
-    streams = flows.streams()
     return Plan(
         rows=rows,
         conventions=c,
@@ -203,18 +203,15 @@ def _mesh(timeline: Timeline, lengths: Floats, *, halves: bool) -> Mesh:
     return mesh.split(np.ones(len(lengths), dtype=bool)) if halves else mesh
 
 
-def _interest(rows: Rows, conventions: Conventions, path: Path, mesh: Mesh) -> RatePath:
-    """r as a path; a geometric path of amounts means a linear one for rates, which may be zero or negative."""
-    if rows.rates is None:
+def _interest(rows: Rows, conventions: Conventions, rates: Coefficients | None, mesh: Mesh) -> RatePath:
+    """r as a path on the mesh, from the coefficients of its column between the rows."""
+    if rows.rates is None or rates is None:
         assert conventions.interest is not None, "a plan has a constant r or a column of it"
         return RatePath.constant(conventions.interest, len(mesh.lengths))
-    if isinstance(path, Geometric):
-        path = path_named("linear", path.lengths)
-    found = path.coefficients(rows.rates[None], rows.rate_error)
     last = float(rows.rates[-1])
     beyond = Rate.along_path(last, abs(last) * rows.rate_error)
     # a mesh of half periods is finer than the rows, and a held rate has no variation in them
-    return RatePath(coefficients=found.p[0][mesh.interval], error=found.p_error[0][mesh.interval], beyond=beyond)
+    return RatePath(coefficients=rates.p[0][mesh.interval], error=rates.p_error[0][mesh.interval], beyond=beyond)
 
 
 class _Flows:
@@ -226,6 +223,8 @@ class _Flows:
         self.path = path
         self.mesh = mesh
         self.amounts = rows.amounts
+        self.rates = rows.rates
+        self.rate_error = rows.rate_error
         self.unit = float(conventions.unit)
         self.values = np.stack([amounts.values for amounts in rows.amounts])
         self.error = rows.reading_error
@@ -240,15 +239,31 @@ class _Flows:
         elif conventions.periods and not spread and per_year:
             self.per_cell = path.lengths
 
-    def streams(self) -> Streams:
-        """One stream for each column."""
+    def streams(self) -> tuple[Streams, Coefficients | None]:
+        """One stream for each column of amounts, and the path of r between the rows where it is a column."""
         values, error = self.values, self.error
         if not isinstance(self.per_cell, float):
             values, error = values * self.per_cell, error + 3.0 * UNIT
-        if self.timing not in ("continuous", "spread"):
-            return self._lumps(values, error)
-        found = self.path.coefficients(values, error)
-        return Streams(p=found.p, q=found.q, p_error=found.p_error, q_error=found.q_error, tail=self._tail())
+        if self.timing in ("continuous", "spread"):
+            found, rates = self._interpolated(values, error)
+            streams = Streams(p=found.p, q=found.q, p_error=found.p_error, q_error=found.q_error, tail=self._tail())
+            return streams, rates
+        rates = None if self.rates is None else self.path.coefficients(self.rates[None], self.rate_error)
+        return self._lumps(values, error), rates
+
+    def _interpolated(self, values: Floats, error: float) -> tuple[Coefficients, Coefficients | None]:
+        """Amounts and r along the path, in one go where both follow the same; where amounts are geometric, r is linear, since it
+        may be zero or negative."""
+        if self.rates is None:
+            return self.path.coefficients(values, error), None
+        if isinstance(self.path, Geometric):
+            rates = path_named("linear", self.path.lengths).coefficients(self.rates[None], self.rate_error)
+            return self.path.coefficients(values, error), rates
+        errors = np.full((len(values) + 1, 1), error)
+        errors[-1] = self.rate_error
+        found = self.path.coefficients(np.concatenate([values, self.rates[None]]), errors)
+        amounts = replace(found, p=found.p[:-1], p_error=found.p_error[:-1])
+        return amounts, replace(found, p=found.p[-1:], p_error=found.p_error[-1:])
 
     def _tail(self) -> Tail | None:
         """The last values go on in continuous data, the last period in totals."""

@@ -59,6 +59,8 @@ WEIGHTS: Floats = np.concatenate([_HALF_WEIGHTS[::-1], _HALF_WEIGHTS])
 _NODE_POWERS = NODES ** np.arange(1, 32)[:, None]
 """z^1 … z^31 at the nodes, (31, 16), for evaluating polynomials as matrix products."""
 
+_ONES = np.ones(64)
+
 _ELLIPSE_AXES = (np.array(ELLIPSES) + 1.0 / np.array(ELLIPSES)) / 2.0
 _ELLIPSE_POWERS = _ELLIPSE_AXES ** np.arange(32)[:, None]
 _LOG_SHRINK = np.log(64.0 / 15.0 / (1.0 - np.array(ELLIPSES) ** -2.0)) - 2.0 * POINTS * np.log(np.array(ELLIPSES))
@@ -88,6 +90,11 @@ def at_nodes(coefficients: Floats) -> Floats:
     result = np.asarray(coefficients[..., 1:] @ _NODE_POWERS[:degree])
     result += coefficients[..., :1]
     return result
+
+
+def summed(array: Floats) -> Floats:
+    """The sum over the last, short axis; as a product with ones, which is several times faster than a reduction."""
+    return np.asarray(array @ _ONES[: array.shape[-1]])
 
 
 def polynomial(coefficients: Floats, z: Floats | float) -> Floats:
@@ -132,7 +139,7 @@ def integrate(p: Floats, q: Floats, lengths: Floats, *, p_error: Floats, q_error
     # the part of p within p_error is integrated too: it joins the constant term of the truncation bound
     sizes, swings = np.abs(p), np.abs(q[..., 1:])
     sizes[..., 0] += p_error
-    size, swing = sizes.sum(axis=-1), swings.sum(axis=-1)
+    size, swing = summed(sizes), summed(swings)
     truncation = truncation_bound(sizes, q[..., 0], swings, lengths)
     p_steps, q_steps = 3 * p.shape[-1], 3 * q.shape[-1]
     # an error of up to 1e-3 in q is what the supported range allows at the very most: exp(x) − 1 ≤ 1.001·x

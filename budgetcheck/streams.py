@@ -13,7 +13,7 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 
-from .quadrature import EXP_ERROR, SAFETY, UNIT, Floats, Integral, Mask, integrate, running_sum
+from .quadrature import EXP_ERROR, SAFETY, UNIT, Floats, Integral, Mask, integrate, running_sum, summed
 from .rates import ZERO, Rate
 
 
@@ -67,14 +67,12 @@ class RatePath:
     @classmethod
     def constant(cls, rate: Rate, intervals: int) -> RatePath:
         """The same rate throughout."""
-        return cls(
-            coefficients=np.full((intervals, 1), rate.value), error=np.full(intervals, rate.error), beyond=rate
-        )
+        return cls(coefficients=np.full((intervals, 1), rate.value), error=np.full(intervals, rate.error), beyond=rate)
 
     def __sub__(self, other: RatePath) -> RatePath:
         width = max(self.coefficients.shape[1], other.coefficients.shape[1])
         coefficients = _padded(self.coefficients, width) - _padded(other.coefficients, width)
-        rounding = UNIT * np.abs(coefficients).sum(axis=1)
+        rounding = UNIT * summed(np.abs(coefficients))
         return RatePath(
             coefficients=coefficients,
             error=(self.error + other.error + rounding) * SAFETY,
@@ -117,7 +115,7 @@ class Exponent:
         minus_one = np.where(np.arange(degree) % 2 == 0, -1.0, 1.0)
         at_left = raised @ minus_one
         increments = 2.0 * raised[:, ::2].sum(axis=1)
-        size = np.abs(raised).sum(axis=1)
+        size = summed(np.abs(raised))
         piece_error = lengths * rate.error * SAFETY + 8.0 * UNIT * size
         at, at_error = running_sum(increments)
         carried = np.concatenate([[0.0], np.cumsum(piece_error)])
@@ -142,7 +140,7 @@ class Exponent:
     @property
     def largest(self) -> float:
         """Bound on |E| over the rows."""
-        return float(np.abs(self.coefficients).sum(axis=1).max())
+        return float(summed(np.abs(self.coefficients)).max())
 
 
 @dataclass(frozen=True, kw_only=True, eq=False)
@@ -177,9 +175,7 @@ class Lumps:
         exponent, exponent_error = np.zeros(count), np.zeros(count)
         amounts[:, at], errors[:, at] = self.amounts, self.errors
         exponent[at], exponent_error[at] = self.exponent, self.exponent_error
-        return Lumps(
-            amounts=amounts, errors=errors, exponent=exponent, exponent_error=exponent_error, last=int(at[self.last])
-        )
+        return Lumps(amounts=amounts, errors=errors, exponent=exponent, exponent_error=exponent_error, last=int(at[self.last]))
 
 
 @dataclass(frozen=True, kw_only=True, eq=False)
@@ -226,9 +222,7 @@ class Streams:
     lumps: Lumps | None = None
     tail: Tail | None = None
 
-    def restated(
-        self, exponent: Exponent | None, *, sign: int = 1, factor: float = 1.0, factor_error: float = 0.0
-    ) -> Streams:
+    def restated(self, exponent: Exponent | None, *, sign: int = 1, factor: float = 1.0, factor_error: float = 0.0) -> Streams:
         """The streams times factor·exp(sign·E(t)), E = 0 where there is no exponent; factor_error is relative.
 
         Discounting is sign = −1.
@@ -237,12 +231,12 @@ class Streams:
         p, p_error = self.p, self.p_error
         if factor != 1.0 or factor_error > 0.0:
             p = self.p * factor
-            p_error = (abs(factor) * self.p_error + relative * np.abs(p).sum(axis=2)) * SAFETY
+            p_error = (abs(factor) * self.p_error + relative * summed(np.abs(p))) * SAFETY
         q, q_error = self.q, self.q_error
         if exponent is not None:
             width = max(self.q.shape[2], exponent.coefficients.shape[1])
             q = _padded(self.q, width) + sign * _padded(exponent.coefficients, width)[None]
-            q_error = (self.q_error + exponent.error + UNIT * np.abs(q).sum(axis=2)) * SAFETY
+            q_error = (self.q_error + exponent.error + UNIT * summed(np.abs(q))) * SAFETY
         lumps, tail = self._scaled(factor, relative)
         if exponent is not None:
             lumps = None if lumps is None else lumps.restated(exponent, sign)
@@ -281,8 +275,8 @@ class Streams:
 
     def log_size(self, lengths: Floats) -> float:
         """|q| + max(0, ln(|p|·length)), the largest over all intervals, lump sums and tails: what the supported range limits."""
-        amount = np.log(np.maximum(np.abs(self.p).sum(axis=2) * lengths, 1.0))
-        largest = float((np.abs(self.q).sum(axis=2) + amount).max())
+        amount = np.log(np.maximum(summed(np.abs(self.p)) * lengths, 1.0))
+        largest = float((summed(np.abs(self.q)) + amount).max())
         if self.lumps is not None:
             amount = np.log(np.maximum(np.abs(self.lumps.amounts), 1.0))
             largest = max(largest, float((np.abs(self.lumps.exponent) + amount).max()))

@@ -167,8 +167,7 @@ def from_frame(frame: pd.DataFrame) -> Table:
     """The columns of a DataFrame; row i is 'line' i + 2, as if it had been written as CSV. The index is not read."""
     digest = hashlib.sha256()
     columns = []
-    for position, header in enumerate(frame.columns):
-        series = frame.iloc[:, position]
+    for header, series in frame.items():
         column = _frame_column(str(header), series)
         digest.update(str(header).encode("utf-8", "backslashreplace") + b"\0")
         body = column.numbers.tobytes() if column.numbers is not None else repr(column.cells).encode("utf-8", "replace")
@@ -184,8 +183,7 @@ def from_frame(frame: pd.DataFrame) -> Table:
 
 
 def _frame_column(header: str, series: pd.Series[Any]) -> Column:
-    kind = series.dtype.kind if hasattr(series.dtype, "kind") else "O"
-    if kind in "iuf" and not series.isna().any():
+    if series.dtype.kind in "iuf" and not series.hasnans:
         return Column(header=header.strip(), cells=None, numbers=series.to_numpy(dtype=np.float64))
     # everything else is read as text by the grammar of figures, so that True, None and 1_000 are refused by name
     return Column(header=header.strip(), cells=tuple("" if _missing(cell) else str(cell) for cell in series.tolist()))

@@ -77,7 +77,9 @@ def decide(plan: Plan, account: Account, errors: Errors, tail: TailEstimate) -> 
         reason = f"Beyond the last row present values are not finite as the table stands, but {tail.why}."
         return _decision("UNDECIDED", reason, _DECLARE_TAIL, math.inf, threshold, scale)
     if Reach.UNKNOWN in (income, consumption):
-        reason = "Beyond the last row r − g − n is within its own rounding of the growth, so that no present value can be stated."
+        reason = (
+            "Beyond the last row r − g − n is within its own rounding of the growth, so that no present value can be stated."
+        )
         decides = "A declared constant r (compared exactly), or a last row of r that differs from g + n."
         return _decision("UNDECIDED", reason, decides, math.inf, threshold, scale)
     return _infinite(plan, account, errors, threshold, scale)
@@ -147,9 +149,7 @@ def _net_of_equal_tails(account: Account, errors: Errors, threshold: float, scal
     )
 
 
-def _finite(
-    plan: Plan, account: Account, errors: Errors, tail: TailEstimate, threshold: float, scale: float
-) -> Decision:
+def _finite(plan: Plan, account: Account, errors: Errors, tail: TailEstimate, threshold: float, scale: float) -> Decision:
     slack, e = account.slack.value, errors.in_verdict
     decides = None
     share = _share(slack, scale)

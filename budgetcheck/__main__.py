@@ -1,0 +1,5 @@
+"""`python -m budgetcheck`."""
+
+from .cli import main
+
+main()
