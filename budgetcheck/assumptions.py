@@ -46,8 +46,8 @@ class Assumption:
 
 @dataclass(frozen=True, kw_only=True)
 class Assumptions:
-    """What was declared, by key path; `columns` maps headers to roles; findings hold the notes and the stops of reading;
-    attempted: key paths (and headers of [columns]) that were given but could not be read."""
+    """What was declared, by key path; `columns` maps headers to roles; findings hold the notes and the stops of
+    reading; attempted: key paths (and headers of [columns]) that were given but could not be read."""
 
     declared: tuple[Assumption, ...]
     columns: tuple[tuple[str, str], ...]

@@ -44,9 +44,7 @@ def _version(asked: bool) -> None:
         raise typer.Exit()
 
 
-@app.callback(
-    epilog="Example: budgetcheck assess plan.csv --r 0.03. Exit codes: 0 PASS, 2 wrong usage, 3 FAIL, 4 UNDECIDED, 5 input refused."
-)
+@app.callback(epilog="Example: budgetcheck assess samples/keeper_years.csv")
 def _budgetcheck(
     version: Annotated[
         bool, typer.Option("--version", callback=_version, is_eager=True, help="Show the version and exit.")

@@ -52,7 +52,7 @@ def _convergence(plan: Plan, account: Account) -> Condition:
         return Condition(
             holds=None,
             net_rate=net,
-            sentence=f"Whether present values are finite cannot be told: {margin}, within its own rounding of the growth there.",
+            sentence=f"Whether present values are finite cannot be told: {margin}, within its rounding of the growth there.",
         )
     if Reach.INFINITE in reaches:
         which = " and ".join(side.name for side in (account.income, account.consumption) if side.reach is Reach.INFINITE)

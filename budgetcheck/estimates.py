@@ -1,5 +1,4 @@
-"""What cannot be proved but can be estimated: the error of reconstructing a path from its rows, and that of an
-undeclared tail.
+"""Errors that can be estimated, not proved: of reconstructing a path from its rows, and of an undeclared tail.
 
 Reconstruction: a continuous plan is known only at its rows. The change of slack when every second row is left out is larger
 than the error that remains, by about the order of the interpolation (16 for a smooth path), wherever the rows are fine enough at all.

@@ -87,7 +87,7 @@ KEYS = (
 )
 
 BY_PATH = {key.path: key for key in KEYS}
-SECTIONS = tuple(dict.fromkeys(key.section for key in KEYS)) + ("columns",)
+SECTIONS = (*dict.fromkeys(key.section for key in KEYS), "columns")
 
 LATER_KEYS = frozenset(
     {

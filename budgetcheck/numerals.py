@@ -1,7 +1,7 @@
 """How a figure is written: a grammar of its own, since float() also reads '1_000', 'nan', '１２' and '1e999'.
 
-A figure is ASCII: a sign (+, - or U+2212), digits with at most one decimal point, and an exponent of up to three digits. What is
-read keeps half a unit of its last printed digit, the most that rounding before printing can have moved it.
+A figure is ASCII: a sign (+, - or U+2212), digits with at most one decimal point, and an exponent of up to three digits. What
+is read keeps half a unit of its last printed digit, the most that rounding before printing can have moved it.
 """
 
 from __future__ import annotations

@@ -252,8 +252,8 @@ class _Flows:
         return self._lumps(values, error), rates
 
     def _interpolated(self, values: Floats, error: float) -> tuple[Coefficients, Coefficients | None]:
-        """Amounts and r along the path, in one go where both follow the same; where amounts are geometric, r is linear, since it
-        may be zero or negative."""
+        """Amounts and r along the path, in one go where both follow the same; where amounts are geometric, r is linear, since
+        it may be zero or negative."""
         if self.rates is None:
             return self.path.coefficients(values, error), None
         if isinstance(self.path, Geometric):

@@ -1,8 +1,8 @@
 """Streams of money over time: pieces p·exp(q), lump sums and a tail, closed under sum, restatement and discounting.
 
 Streams live on a mesh of breakpoints 0 = t_0 < … < t_m, the same for everything in one plan. On each interval a stream is
-p(z)·exp(q(z)), z in [−1, 1]; streams side by side are added up by adding their integrals. At breakpoints there may be lump sums;
-after the last breakpoint a perpetual stream has a tail. An exponent is a running integral of a rate, E(t) = ∫_0^t rate,
+p(z)·exp(q(z)), z in [−1, 1]; streams side by side are added up by adding their integrals. At breakpoints there may be lump
+sums; after the last breakpoint a perpetual stream has a tail. An exponent is a running integral of a rate, E(t) = ∫_0^t rate,
 polynomial on each interval: restating by growth or discounting by interest adds ±E to q, so that one integral serves all.
 """
 
@@ -182,9 +182,9 @@ class Lumps:
 class Tail:
     """What follows the last breakpoint T of k perpetual streams.
 
-    Either levels·exp(exponent), levels (k,) within errors (k,): the stream goes on from there; or, with `period` set (years), the
-    last period before T comes again and again. In both cases it grows from then on at a rate of its own, which belongs to the plan:
-    decay is the discount rate less that growth. flows (k,) says where anything flows in the tail at all.
+    Either levels·exp(exponent), levels (k,) within errors (k,): the stream goes on from there; or, with `period` set (years),
+    the last period before T comes again and again. In both cases it grows from then on at a rate of its own, which belongs to
+    the plan: decay is the discount rate less that growth. flows (k,) says where anything flows in the tail at all.
     """
 
     levels: Floats
@@ -274,7 +274,7 @@ class Streams:
         return integrate(self.p, self.q, lengths, p_error=self.p_error, q_error=self.q_error)
 
     def log_size(self, lengths: Floats) -> float:
-        """|q| + max(0, ln(|p|·length)), the largest over all intervals, lump sums and tails: what the supported range limits."""
+        """|q| + max(0, ln(|p|·length)), the largest over intervals, lump sums and tails: what the supported range limits."""
         amount = np.log(np.maximum(summed(np.abs(self.p)) * lengths, 1.0))
         largest = float((summed(np.abs(self.q)) + amount).max())
         if self.lumps is not None:

@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 from dataclasses import dataclass
 from decimal import Context, Decimal
+from itertools import pairwise
 
 import numpy as np
 
@@ -62,5 +63,5 @@ def from_figures(kind: str, figures: Sequence[str] | None, values: Floats) -> Ti
     exact = [Decimal(figure.strip(" \t").replace("\u2212", "-")) for figure in figures]
     subtract = _DIGITS.subtract
     times = np.array([float(subtract(later, exact[0])) for later in exact])
-    gaps = [float(subtract(later, earlier)) for earlier, later in zip(exact, exact[1:], strict=False)]
+    gaps = [float(subtract(later, earlier)) for earlier, later in pairwise(exact)]
     return Timeline(kind=kind, start=float(values[0]), times=times, lengths=np.array(gaps))

@@ -34,8 +34,8 @@ class Errors:
 
 @dataclass(frozen=True, kw_only=True)
 class Decision:
-    """verdict: PASS, FAIL or UNDECIDED; reason and would_decide: sentences; error: e; threshold: τ·scale; finite: whether slack is a
-    finite figure; warning: what makes an infinite case suspicious."""
+    """verdict: PASS, FAIL or UNDECIDED; reason and would_decide: sentences; error: e; threshold: τ·scale; finite: whether slack
+    is a finite figure; warning: what makes an infinite case suspicious."""
 
     verdict: str
     reason: str
@@ -72,7 +72,7 @@ def decide(plan: Plan, account: Account, errors: Errors, tail: TailEstimate) -> 
     threshold = plan.conventions.tolerance * scale
     income, consumption = account.income.reach, account.consumption.reach
     if income is Reach.FINITE and consumption is Reach.FINITE:
-        return _finite(plan, account, errors, tail, threshold, scale)
+        return _finite(account, errors, tail, threshold, scale)
     if math.isinf(tail.error):
         reason = f"Beyond the last row present values are not finite as the table stands, but {tail.why}."
         return _decision("UNDECIDED", reason, _DECLARE_TAIL, math.inf, threshold, scale)
@@ -149,7 +149,7 @@ def _net_of_equal_tails(account: Account, errors: Errors, threshold: float, scal
     )
 
 
-def _finite(plan: Plan, account: Account, errors: Errors, tail: TailEstimate, threshold: float, scale: float) -> Decision:
+def _finite(account: Account, errors: Errors, tail: TailEstimate, threshold: float, scale: float) -> Decision:
     slack, e = account.slack.value, errors.in_verdict
     decides = None
     share = _share(slack, scale)

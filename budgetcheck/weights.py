@@ -1,7 +1,7 @@
 """Weight per row: how much slack and present values move with each figure of the table.
 
-Where values enter linearly, a present value is Σ weight·value, so a weight is a row's contribution per unit of money in its cell. For a
-geometric path, and for the interest rate, weights are first derivatives. With the discounted net flow still to come,
+Where values enter linearly, a present value is Σ weight·value, so a weight is a row's contribution per unit of money in its cell. For
+a geometric path, and for the interest rate, weights are first derivatives. With the discounted net flow still to come,
 F(s) = S − D(s), D(s) = k(0) + ∫_0^s e^{−Λ}(w − c), a change φ of the rate path moves slack by −∫ φ F ds.
 """
 
@@ -24,8 +24,8 @@ class RowWeights:
     """amounts (k, n): derivative of each column's present value, per unit of human capital, by each of its figures;
     rates (n,): derivative of slack by each figure of r, None where r is no column of printed figures.
 
-    input_rounding: by how much half a unit in the last printed digit of every amount and rate, all against the plan at once, could
-    move slack; None for figures that were never printed.
+    input_rounding: by how much half a unit in the last printed digit of every amount and rate, all against the plan at once,
+    could move slack; None for figures that were never printed.
     """
 
     amounts: Floats

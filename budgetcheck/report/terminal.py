@@ -14,7 +14,7 @@ from rich.text import Text
 from ..assessment import Assessment
 from ..assumptions import Assumption, shown
 from ..bounded import Bounded
-from ..budget import PresentValue, Reach
+from ..budget import Account, PresentValue, Reach
 from ..findings import Finding, Severity
 from ..text import visible
 from .figures import amount, error, percent, significant
@@ -34,8 +34,8 @@ Row = tuple[str, str, str]
 
 
 def render(assessment: Assessment, *, width: int = 80, color: bool = False, full: bool = False) -> str:
-    """The report as text, at most `width` columns wide; color: with escape sequences for a terminal that shows colours; full: every
-    assumption and finding, and the account's error in full."""
+    """The report as text, at most `width` columns wide; color: with escape sequences for a terminal that shows colours;
+    full: everything, not only what is decisive."""
     page = _Page(width, color)
     a = assessment
     page.verdict(a.verdict, a.reason)
@@ -181,10 +181,10 @@ def _account(a: Assessment, full: bool) -> Iterator[Row]:
     yield "  of this proved", error(a.slack.per_effective_unit.bound), error(a.slack.per_household.bound)
 
 
-def _scale(account: object) -> float:
-    sides = [getattr(account, name) for name in ("income", "consumption")]
+def _scale(account: Account) -> float:
+    sides = (account.income, account.consumption)
     finite = [abs(side.whole.value) for side in sides if side.reach is Reach.FINITE]
-    return max([abs(getattr(account, "wealth").value), *finite, 1e-300])  # noqa: B009
+    return max([abs(account.wealth.value), *finite, 1e-300])
 
 
 def _whole(side: PresentValue) -> Bounded | None:
