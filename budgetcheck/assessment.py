@@ -34,8 +34,8 @@ if TYPE_CHECKING:
 @dataclass(frozen=True, kw_only=True)
 class Slack:
     """Lifetime resources less uses. per_effective_unit: money per unit of human capital; per_household: money, both at
-    t = 0; share_of_resources; consumption_scale: the factor on all consumption that exhausts the budget; level_per_year: slack as a
-    level yearly amount per household over the plan. None where infinite or without meaning."""
+    t = 0; share_of_resources; consumption_scale: the factor on all consumption that exhausts the budget; level_per_year:
+    slack as a level yearly amount per household over the plan. None where infinite or without meaning."""
 
     per_effective_unit: Bounded | None
     per_household: Bounded | None
@@ -54,8 +54,8 @@ class PresentValues:
 
 @dataclass(frozen=True, kw_only=True)
 class Tail:
-    """kind: how the plan goes on after its last row; shares of the present values that come from there; estimate: of the error of
-    an undeclared tail."""
+    """kind: how the plan goes on after its last row; shares of the present values that come from there; estimate: of the
+    error of an undeclared tail."""
 
     kind: str
     share_of_income: float | None
@@ -332,8 +332,10 @@ def _computed_findings(ledger: Ledger, plan: Plan, weights: RowWeights, decision
     negative = np.argwhere(weights.amounts < 0.0)
     if len(negative):
         column, row = int(negative[0][0]), int(negative[0][1])
-        message = f"the smooth path gives {len(negative)} cells a negative weight, first here: "
+        message = (
+            f"the smooth path gives {len(negative)} cells a negative weight, first here: "
             "more in the cell lowers its present value."
+        )
         name = plan.rows.amounts[column].name
         found.append(note("negative-weight", message, file=ledger.file, row=ledger.lines[row], column=name))
     return found

@@ -83,8 +83,8 @@ class Assumptions:
 def read(source: Source, options: Mapping[str, str] | None = None) -> Assumptions:
     """Read assumptions from a TOML file (a path) or a mapping in its shape, and lay options over them.
 
-    options: by name ("r", "g", "n", "wealth", "tolerance"), the text of each figure. Faults are among the findings, so that those
-    of the table can be reported in the same run; a file that is no TOML at all raises InputRefused.
+    options: by name ("r", "g", "n", "wealth", "tolerance"), the text of each figure. Faults are among the findings, so that
+    those of the table can be reported in the same run; a file that is no TOML at all raises InputRefused.
     """
     tree: dict[str, Any] = {}
     text, name = "", None

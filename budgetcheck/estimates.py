@@ -1,7 +1,8 @@
 """Errors that can be estimated, not proved: of reconstructing a path from its rows, and of an undeclared tail.
 
 Reconstruction: a continuous plan is known only at its rows. The change of slack when every second row is left out is larger
-than the error that remains, by about the order of the interpolation (16 for a smooth path), wherever the rows are fine enough at all.
+than the error that remains, by about the order of the interpolation (16 for a smooth path), wherever the rows are fine enough
+at all.
 
 Tail: where the author declared none, balanced growth is assumed after the last row although the last rows may still move.
 Twice the difference between balanced growth and a converging tail fitted to the last rows is taken as the error.

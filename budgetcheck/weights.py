@@ -1,8 +1,8 @@
 """Weight per row: how much slack and present values move with each figure of the table.
 
-Where values enter linearly, a present value is Σ weight·value, so a weight is a row's contribution per unit of money in its cell. For
-a geometric path, and for the interest rate, weights are first derivatives. With the discounted net flow still to come,
-F(s) = S − D(s), D(s) = k(0) + ∫_0^s e^{−Λ}(w − c), a change φ of the rate path moves slack by −∫ φ F ds.
+Where values enter linearly, a present value is Σ weight·value, so a weight is a row's contribution per unit of money in its
+cell. For a geometric path, and for the interest rate, weights are first derivatives. With the discounted net flow still to
+come, F(s) = S − D(s), D(s) = k(0) + ∫_0^s e^{−Λ}(w − c), a change φ of the rate path moves slack by −∫ φ F ds.
 """
 
 from __future__ import annotations
