@@ -19,7 +19,8 @@ from .estimates import TailEstimate, reconstruction, tail
 from .findings import Finding, InputRefused, NotAffordable, Severity, note, stop, warn, worst_first
 from .ledger import Ledger, keep
 from .paths import overshoots
-from .plan import OutOfRange, Plan, build, rows_of
+from .plan import OutOfRange, Plan, build
+from .rows import rows_of
 from .streams import Streams
 from .table import Table, from_frame, read_csv
 from .verdict import Decision, Errors, decide
@@ -148,13 +149,15 @@ def _read(
         faults.extend(finding for finding in stated.findings if finding.severity is Severity.STOP)
     except InputRefused as refused:
         faults.extend(refused.findings)
-    if table is not None and stated is not None:
+    if table is not None:
         try:
-            ledger = keep(table, stated)
-            if not faults:
+            ledger = keep(table, stated or assumptions_module.NONE)
+            if stated is not None and not faults:
                 return ledger, stated
         except InputRefused as refused:
-            faults.extend(refused.findings)
+            # what an unreadable assumptions file might have said of roles and rates is not held against the table
+            excused = ("header-role", "rate-missing") if stated is None else ()
+            faults.extend(finding for finding in refused.findings if finding.rule not in excused)
     raise InputRefused(faults)
 
 
@@ -188,7 +191,7 @@ def _settled(ledger: Ledger, stated: Assumptions) -> tuple[Conventions, list[Fin
 
 def _built(ledger: Ledger, conventions: Conventions) -> tuple[Plan, list[Finding]]:
     """The plan; a smooth path that nobody declared gives way to a linear one where it leaves the range of the rows."""
-    rows = rows_of(ledger, conventions)
+    rows = rows_of(ledger, conventions.compounding)
     plan = build(rows, conventions, conventions.path)
     found: list[Finding] = []
     if plan.path == "smooth" and not conventions.path_declared:

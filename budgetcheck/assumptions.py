@@ -80,6 +80,10 @@ class Assumptions:
         return None if entry is None else Fraction(entry.value)
 
 
+NONE = Assumptions(declared=(), columns=(), findings=(), attempted=frozenset(), file=None)
+"""Nothing declared: every assumption at its default."""
+
+
 def read(source: Source, options: Mapping[str, str] | None = None) -> Assumptions:
     """Read assumptions from a TOML file (a path) or a mapping in its shape, and lay options over them.
 

@@ -231,7 +231,7 @@ def _last_period(mesh: Mesh, integral: Integral, lumps: tuple[Floats, Floats] | 
     base = total(integral.value[k, last], integral.bound[k, last])
     if lumps is None or streams.lumps is None:
         return base
-    at = streams.lumps.last
+    at = streams.lumps.at[-1]
     return base + Bounded(float(lumps[0][k, at]), float(lumps[1][k, at]))
 
 

@@ -11,6 +11,7 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 from .budget import Account, Reach
+from .figures import significant
 from .plan import Plan
 from .verdict import Decision
 
@@ -66,8 +67,8 @@ def _no_ponzi(plan: Plan, account: Account, decision: Decision) -> Condition:
     holds = {"PASS": True, "FAIL": False}.get(decision.verdict)
     limit = account.slack.value + account.terminal.value if decision.finite else None
     where = "in the limit" if plan.conventions.perpetual else "at the end of the plan"
-    required = "" if plan.terminal.value == 0.0 else f", of which {account.terminal.value:.6g} is required"
-    value = "" if limit is None else f" (discounted wealth {where}: {limit:.6g}{required})"
+    required = "" if plan.terminal.value == 0.0 else f", of which {significant(account.terminal.value)} is required"
+    value = "" if limit is None else f" (discounted wealth {where}: {significant(limit)} per unit of human capital{required})"
     sentence = {
         True: f"No debt is left unpaid {where}{value}.",
         False: f"The plan leaves a debt that is never repaid {where}{value}."
@@ -93,10 +94,10 @@ def _transversality(plan: Plan, account: Account, decision: Decision) -> Conditi
         rate = min(decay.value for decay in plan.decays)
         speed = f"; discounted wealth approaches its limit at {rate:.4g} a year"
     sentence = {
-        True: f"Nothing of value is left unused (limit {account.slack.value:.3g}, within tolerance{speed}).",
+        True: f"Nothing of value is left unused (limit {significant(account.slack.value, 3)}, within tolerance{speed}).",
         False: f"Something is {'left unused' if account.slack.value > 0 else 'missing'} for good: "
-        f"{account.slack.value:.6g} per unit of human capital{speed}.",
-        None: f"Whether anything is left unused cannot be told at this accuracy (limit {account.slack.value:.3g}{speed}).",
+        f"{significant(account.slack.value)} per unit of human capital{speed}.",
+        None: f"Whether anything is left unused cannot be told at this accuracy (limit {significant(account.slack.value, 3)}{speed}).",
     }[holds]
     limit = account.slack.value + account.terminal.value
     return Condition(holds=holds, limit=limit, rate_of_approach=rate, sentence=sentence)

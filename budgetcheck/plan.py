@@ -7,7 +7,6 @@ Amounts are interpolated as printed, in the table's own basis, and then restated
     economy            over H         factor 1/H           exponent 0
     per effective unit c·A·L/H        factor A(0)L(0)/H    exponent ∫(g + n)
 
-Rate cells become continuous rates first and are interpolated then.
 """
 
 from __future__ import annotations
@@ -20,12 +19,12 @@ import numpy as np
 from .bounded import Bounded
 from .conventions import Conventions
 from .findings import BudgetcheckError
-from .ledger import Ledger
-from .paths import Coefficients, Geometric, Linear, Path, Step, path_named
+from .paths import Coefficients, Geometric, Path, Step, path_named
 from .quadrature import UNIT, Floats, Mask
-from .rates import CONVERSIONS, ZERO, Rate
+from .rates import ZERO, Rate
+from .rows import Rows
 from .streams import Exponent, Lumps, Mesh, RatePath, Streams, Tail
-from .timeline import Timeline, every_second
+from .timeline import Timeline
 
 LARGEST_EXPONENT = 690.0
 """Supported range of |Λ| + ln(value·length): e^690 and e^−690 are still normal binary64 numbers with room for the amounts."""
@@ -36,53 +35,20 @@ class OutOfRange(BudgetcheckError):
 
 
 @dataclass(frozen=True, eq=False)
-class Amounts:
-    """One column of amounts: values (n,) as printed, half_units (n,) or None, last: the last figure exactly."""
-
-    name: str
-    role: str
-    values: Floats
-    half_units: Floats | None
-    last: Fraction
-
-
-@dataclass(frozen=True, eq=False)
-class Rows:
-    """The rows of a plan as numbers. rates (n,), continuous, within a relative rate_error, with the derivative of each by its
-    printed figure, rate_slopes (n,); reading_error: relative error of every figure against the decimal one."""
-
-    timeline: Timeline
-    amounts: tuple[Amounts, ...]
-    rates: Floats | None
-    rate_error: float
-    rate_slopes: Floats | None
-    rate_half_units: Floats | None
-    reading_error: float
-
-    def thinned(self) -> Rows:
-        """Every second row, the first and the last kept."""
-        kept = every_second(len(self.timeline.times))
-        amounts = tuple(replace(a, values=a.values[kept], half_units=None) for a in self.amounts)
-        rates = None if self.rates is None else self.rates[kept]
-        return replace(self, timeline=self.timeline.thinned(), amounts=amounts, rates=rates)
-
-
-@dataclass(frozen=True, eq=False)
 class Plan:
     """Streams in household money on one mesh, with the rates that discount and restate them.
 
-    streams : one for each column of amounts, in their order; kernel : what one unit of a figure in the table stands for, by
-    power of z, from which row weights are taken (for a geometric path: two streams a column); interest : r; growth : the
+    streams : one for each column of amounts, in their order; interest : r; growth : the
     constant g + n; decays : for each column, r − g − n beyond the last row less the growth of its tail; scale : A(0)·L(0)/H;
     wealth : household money at t = 0; terminal, terminal_growth : the requirement at the end T of a finite plan is
-    terminal·exp(terminal_growth·T) in household money; path : the name of the interpolation, or "totals".
+    terminal·exp(terminal_growth·T) in household money; path : the name of the interpolation, or "totals"; per_cell :
+    from a cell to a yearly rate or a lump sum, (m,) or 1.
     """
 
     rows: Rows
     conventions: Conventions
     mesh: Mesh
     streams: Streams
-    kernel: Streams
     interest: RatePath
     growth: Rate
     decays: tuple[Rate, ...]
@@ -92,6 +58,7 @@ class Plan:
     terminal_growth: Rate
     amounts_path: Path
     path: str
+    per_cell: Floats | float
 
     @property
     def incomes(self) -> Mask:
@@ -104,43 +71,8 @@ class Plan:
             self,
             mesh=self.mesh.split(mask),
             streams=self.streams.split(mask),
-            kernel=self.kernel.split(mask),
             interest=self.interest.split(mask),
         )
-
-
-def rows_of(ledger: Ledger, conventions: Conventions) -> Rows:
-    """The ledger's columns of amounts and its rates, made continuous."""
-    amounts = tuple(
-        Amounts(column.header, column.role, column.values, column.half_units, column.last)
-        for column in ledger.columns
-        if column.role in ("income", "consumption")
-    )
-    printed = any(column.half_units is not None for column in ledger.columns)
-    rates = ledger.of_role("r")
-    values, error, slopes = _continuous(rates[0].values, conventions.compounding) if rates else (None, 0.0, None)
-    return Rows(
-        timeline=ledger.timeline,
-        amounts=amounts,
-        rates=values,
-        rate_error=error,
-        rate_slopes=slopes,
-        rate_half_units=rates[0].half_units if rates else None,
-        reading_error=UNIT if printed else 0.0,
-    )
-
-
-def _continuous(cells: Floats, compounding: str) -> tuple[Floats, float, Floats]:
-    """Cells under a compounding convention as continuous rates, m·ln(1 + i/m), their relative error, and d rate / d cell."""
-    if compounding == "continuous":
-        return cells, UNIT, np.ones_like(cells)
-    conversions = CONVERSIONS[compounding]
-    x = cells / conversions
-    rates = conversions * np.log1p(x)
-    # reading x to one rounding moves ln(1 + x) by the condition number x / ((1 + x) ln(1 + x))
-    with np.errstate(invalid="ignore", divide="ignore"):
-        condition = np.where(x == 0.0, 1.0, np.abs(x / ((1.0 + x) * np.log1p(x))))
-    return rates, float((10.0 + 4.0 * condition.max()) * UNIT), 1.0 / (1.0 + x)
 
 
 def build(rows: Rows, conventions: Conventions, path: str) -> Plan:
@@ -155,22 +87,22 @@ def build(rows: Rows, conventions: Conventions, path: str) -> Plan:
     growth = c.g + c.n
     net = interest.beyond - growth
     decay = {"income": net - c.income_growth, "consumption": net - c.consumption_growth}
-    exponent, factor = Exponent.constant(_basis_rate(c, c.basis), mesh), float(_basis_factor(c, c.basis))
+    exponent, factor = Exponent.constant(basis_rate(c, c.basis), mesh), float(basis_factor(c, c.basis))
     return Plan(
         rows=rows,
         conventions=c,
         mesh=mesh,
         streams=streams.restated(exponent, factor=factor, factor_error=UNIT),
-        kernel=flows.kernel(streams).restated(exponent, factor=factor, factor_error=UNIT),
         interest=interest,
         growth=growth,
         decays=tuple(decay[amounts.role] for amounts in rows.amounts),
         scale=_read(c.productivity * c.members),
-        wealth=_read(c.wealth * _basis_factor(c, c.wealth_basis)),
-        terminal=_read(c.terminal_wealth * _basis_factor(c, c.wealth_basis)),
-        terminal_growth=_basis_rate(c, c.wealth_basis),
+        wealth=_read(c.wealth * basis_factor(c, c.wealth_basis)),
+        terminal=_read(c.terminal_wealth * basis_factor(c, c.wealth_basis)),
+        terminal_growth=basis_rate(c, c.wealth_basis),
         amounts_path=amounts_path,
         path="totals" if c.periods else path,
+        per_cell=flows.per_cell,
     )
 
 
@@ -180,7 +112,7 @@ def _read(figure: Fraction) -> Bounded:
     return Bounded(value, UNIT * abs(value))
 
 
-def _basis_factor(c: Conventions, basis: str) -> Fraction:
+def basis_factor(c: Conventions, basis: str) -> Fraction:
     """What one unit of money in that basis is per household at t = 0."""
     return {
         "per person": c.members,
@@ -190,7 +122,7 @@ def _basis_factor(c: Conventions, basis: str) -> Fraction:
     }[basis]
 
 
-def _basis_rate(c: Conventions, basis: str) -> Rate:
+def basis_rate(c: Conventions, basis: str) -> Rate:
     """The rate at which that factor grows."""
     return {"per person": c.n, "per effective unit": c.g + c.n}.get(basis, ZERO)
 
@@ -287,32 +219,7 @@ class _Flows:
         placed, errors = np.zeros((len(amounts), pieces + 1)), np.zeros((len(amounts), pieces + 1))
         placed[:, at], errors[:, at] = amounts, np.abs(amounts) * error
         nothing = np.zeros(pieces + 1)
-        lumps = Lumps(amounts=placed, errors=errors, exponent=nothing, exponent_error=nothing, last=int(at[-1]))
+        lumps = Lumps(amounts=placed, errors=errors, exponent=nothing, exponent_error=nothing, at=at)
         empty = np.zeros((len(amounts), pieces, 1))
         none = np.zeros((1, pieces))
         return Streams(p=empty, q=empty[:1], p_error=none, q_error=none, lumps=lumps, tail=self._tail())
-
-    def kernel(self, streams: Streams) -> Streams:
-        """What one unit of a figure stands for: powers of z for continuous data, a rate or a lump sum for totals."""
-        pieces = len(self.mesh.lengths)
-        none = np.zeros((1, pieces))
-        if self.timing not in ("continuous", "spread"):
-            factor = np.broadcast_to(np.asarray(self.per_cell) * self.unit, (1, len(self.path.lengths)))
-            return replace(self._lumps(factor, 0.0), tail=None)
-        if isinstance(self.path, Geometric):
-            p = np.zeros((2 * len(self.amounts), pieces, 2))
-            p[0::2, :, 0] = p[1::2, :, 1] = streams.p[:, :, 0]
-            doubled = np.repeat(streams.q, 2, axis=0)
-            return Streams(p=p, q=doubled, p_error=none, q_error=none, tail=self._unit_tail(len(p)))
-        powers = 1 if isinstance(self.path, Step) else 2 if isinstance(self.path, Linear) else 4
-        p = np.broadcast_to(np.eye(powers)[:, None, :] * self.unit, (powers, pieces, powers))
-        if not isinstance(self.per_cell, float):
-            p = p * self.per_cell[None, :, None]
-        return Streams(p=p, q=none[:, :, None], p_error=none, q_error=none, tail=self._unit_tail(powers))
-
-    def _unit_tail(self, terms: int) -> Tail | None:
-        """A tail of one unit a year after the last row."""
-        if not self.perpetual or self.timing != "continuous":
-            return None
-        levels = np.full(terms, self.unit)
-        return Tail(levels=levels, errors=np.zeros(terms), period=None, flows=np.ones(terms, dtype=bool))

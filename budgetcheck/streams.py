@@ -12,6 +12,7 @@ import math
 from dataclasses import dataclass, replace
 
 import numpy as np
+from numpy.typing import NDArray
 
 from .quadrature import EXP_ERROR, SAFETY, UNIT, Floats, Integral, Mask, integrate, running_sum, summed
 from .rates import ZERO, Rate
@@ -24,7 +25,7 @@ class Mesh:
 
     breaks: Floats
     lengths: Floats
-    interval: np.ndarray[tuple[int, ...], np.dtype[np.intp]]
+    interval: NDArray[np.intp]
 
     def split(self, mask: Mask) -> Mesh:
         """Halve the intervals under the mask, (m,)."""
@@ -146,13 +147,13 @@ class Exponent:
 @dataclass(frozen=True, kw_only=True, eq=False)
 class Lumps:
     """Lump sums of k streams at breakpoints: amounts·exp(exponent), amounts (k, m + 1) within errors, exponent (m + 1,) within
-    exponent_error; last: the breakpoint of the last ones."""
+    exponent_error; at (n,): the breakpoints where each row's sum is paid."""
 
     amounts: Floats
     errors: Floats
     exponent: Floats
     exponent_error: Floats
-    last: int
+    at: NDArray[np.intp]
 
     def restated(self, exponent: Exponent, sign: int) -> Lumps:
         """The sums times exp(sign·E) at their dates."""
@@ -175,7 +176,7 @@ class Lumps:
         exponent, exponent_error = np.zeros(count), np.zeros(count)
         amounts[:, at], errors[:, at] = self.amounts, self.errors
         exponent[at], exponent_error[at] = self.exponent, self.exponent_error
-        return Lumps(amounts=amounts, errors=errors, exponent=exponent, exponent_error=exponent_error, last=int(at[self.last]))
+        return Lumps(amounts=amounts, errors=errors, exponent=exponent, exponent_error=exponent_error, at=at[self.at])
 
 
 @dataclass(frozen=True, kw_only=True, eq=False)

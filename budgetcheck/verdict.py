@@ -11,6 +11,7 @@ from dataclasses import dataclass
 
 from .budget import Account, Reach
 from .estimates import TailEstimate
+from .figures import significant
 from .plan import Plan
 
 
@@ -136,7 +137,7 @@ def _net_of_equal_tails(account: Account, errors: Errors, threshold: float, scal
     slack, error = account.rows_slack.value, account.rows_slack.bound + errors.reconstruction + errors.tail
     beyond = "Both present values are infinite, but beyond the last row income equals consumption, so that the rows decide: "
     verdict = "PASS" if slack - error >= -threshold else "FAIL" if slack + error < -threshold else "UNDECIDED"
-    reason = f"{beyond}{slack:.6g} per unit of human capital is {'left' if slack >= 0 else 'missing'}."
+    reason = f"{beyond}{significant(abs(slack))} per unit of human capital is {'left' if slack >= 0 else 'missing'}."
     decides = None if verdict != "UNDECIDED" else _what_decides(errors, threshold)
     return Decision(
         verdict=verdict,
@@ -184,7 +185,7 @@ def _finite(account: Account, errors: Errors, tail: TailEstimate, threshold: flo
 
 def _share(amount: float, scale: float) -> str:
     if scale <= 0.0:
-        return f"{abs(amount):.4g} per unit of human capital"
+        return f"{significant(abs(amount), 4)} per unit of human capital"
     return f"{100.0 * abs(amount) / scale:.3g} %"
 
 

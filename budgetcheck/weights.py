@@ -7,15 +7,15 @@ come, F(s) = S − D(s), D(s) = k(0) + ∫_0^s e^{−Λ}(w − c), a change φ o
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
 from .budget import Budget, restated_per_unit
-from .paths import Geometric, Step, path_named
-from .plan import Plan
+from .paths import Geometric, Linear, Step, path_named
+from .plan import LARGEST_EXPONENT, Plan, basis_factor, basis_rate
 from .quadrature import NODES, WEIGHTS, Floats
-from .streams import Exponent, Streams
+from .streams import Exponent, Streams, Tail
 from .wealth import WealthPath
 
 
@@ -34,23 +34,22 @@ class RowWeights:
 
 
 def row_weights(budget: Budget, path: WealthPath) -> RowWeights:
-    """The weights of a plan, from the integrals of its kernel."""
+    """The weights of a plan."""
     plan = budget.plan
-    growth = Exponent.constant(plan.growth, plan.mesh)
-    kernel = restated_per_unit(plan.kernel, plan, growth, budget.unit.discount)
-    amounts = _amount_weights(plan, kernel)
+    amounts = _amount_weights(budget)
     rates = None
     if plan.rows.rate_half_units is not None:
         rates = _rate_weights(budget, path)
     return RowWeights(amounts=amounts, rates=rates, input_rounding=_rounding(plan, amounts, rates))
 
 
-def _amount_weights(plan: Plan, kernel: Streams) -> Floats:
-    columns, rows = len(plan.rows.amounts), len(plan.rows.timeline.times)
-    weights = np.zeros((columns, rows))
+def _amount_weights(budget: Budget) -> Floats:
+    plan = budget.plan
+    weights = np.zeros((len(plan.rows.amounts), len(plan.rows.timeline.times)))
+    growth = Exponent.constant(plan.growth, plan.mesh)
+    kernel = restated_per_unit(_kernel(plan), plan, growth, budget.unit.discount)
     if kernel.lumps is not None:
-        paid = np.flatnonzero(kernel.lumps.amounts[0])
-        weights[:] = kernel.lumps.values()[0][0, paid]
+        weights[:] = kernel.lumps.values()[0][0, kernel.lumps.at]
     else:
         starts = np.flatnonzero(np.diff(plan.mesh.interval, prepend=-1))
         moments = np.add.reduceat(kernel.integral(plan.mesh.lengths).value, starts, axis=1)
@@ -64,6 +63,42 @@ def _amount_weights(plan: Plan, kernel: Streams) -> Floats:
     return weights
 
 
+def _kernel(plan: Plan) -> Streams:
+    """What one unit of a figure in the table stands for, in household money: z^j of its interval for continuous data, a
+    rate or a lump sum for totals; for a geometric path the column itself and z times it."""
+    c, mesh = plan.conventions, plan.mesh
+    shift, stretch = _row_coordinate(plan)
+    none = np.zeros((1, len(mesh.lengths)))
+    per_unit = float(basis_factor(c, c.basis)) * float(c.unit)
+    tail = None
+    if c.perpetual and not c.periods:
+        tail = Tail(levels=np.array([per_unit]), errors=np.zeros(1), flows=np.ones(1, dtype=bool))
+    exponent = Exponent.constant(basis_rate(c, c.basis), mesh)
+    if plan.streams.lumps is not None:
+        lumps = plan.streams.lumps
+        zeros = np.zeros_like(lumps.exponent)
+        amounts = zeros[None].copy()
+        amounts[0, lumps.at] = per_unit * plan.per_cell
+        ones = replace(lumps, amounts=amounts, errors=zeros[None], exponent=zeros, exponent_error=zeros)
+        empty = Streams(p=none[:, :, None], q=none[:, :, None], p_error=none, q_error=none, lumps=ones)
+        return empty.restated(exponent)
+    if isinstance(plan.amounts_path, Geometric):
+        # the column's own stream is in household money already, and so is the exponent of its tail
+        if tail is not None and plan.streams.tail is not None:
+            tail = replace(plan.streams.tail, levels=tail.levels, errors=tail.errors, flows=tail.flows)
+        own = plan.streams.p[:, :, 0]
+        p = np.zeros((2 * len(own), len(mesh.lengths), 2))
+        p[0::2, :, 0], p[1::2, :, 0], p[1::2, :, 1] = own, own * shift, own * stretch
+        return Streams(p=p, q=np.repeat(plan.streams.q, 2, axis=0), p_error=none, q_error=none, tail=tail)
+    powers = 1 if isinstance(plan.amounts_path, Step) else 2 if isinstance(plan.amounts_path, Linear) else 4
+    p = np.zeros((powers, len(mesh.lengths), powers))
+    p[0, :, 0] = per_unit * np.broadcast_to(np.asarray(plan.per_cell), plan.amounts_path.lengths.shape)[mesh.interval]
+    for j in range(1, powers):
+        p[j] = p[j - 1] * shift[:, None]
+        p[j, :, 1:] += p[j - 1, :, :-1] * stretch[:, None]
+    return Streams(p=p, q=none[:, :, None], p_error=none, q_error=none, tail=tail).restated(exponent)
+
+
 def _add_tails(plan: Plan, kernel: Streams, weights: Floats) -> None:
     """The last row also stands for what follows it."""
     tail = plan.streams.tail
@@ -73,9 +108,18 @@ def _add_tails(plan: Plan, kernel: Streams, weights: Floats) -> None:
         if decay.sign != 1:
             continue
         if tail.period is not None:
-            weights[k, -1] *= 1.0 + 1.0 / np.expm1(min(decay.value * tail.period, 690.0))
+            weights[k, -1] *= 1.0 + 1.0 / np.expm1(min(decay.value * tail.period, LARGEST_EXPONENT))
         elif kernel.tail is not None:
             weights[k, -1] += kernel.tail.values()[0][0] / decay.value
+
+
+def _row_coordinate(plan: Plan) -> tuple[Floats, Floats]:
+    """For each piece of the mesh, z of the whole interval between rows as shift + stretch·(z of the piece), both (m,)."""
+    mesh = plan.mesh
+    starts = np.flatnonzero(np.diff(mesh.interval, prepend=-1))
+    length = np.add.reduceat(mesh.lengths, starts)[mesh.interval]
+    left = mesh.breaks[:-1] - mesh.breaks[starts][mesh.interval]
+    return 2.0 * (left + mesh.lengths / 2.0) / length - 1.0, mesh.lengths / length
 
 
 def _rate_weights(budget: Budget, path: WealthPath) -> Floats:
@@ -83,10 +127,8 @@ def _rate_weights(budget: Budget, path: WealthPath) -> Floats:
     remaining = budget.unit.account.slack.value - path.discounted_nodes
     mesh = plan.mesh
     starts = np.flatnonzero(np.diff(mesh.interval, prepend=-1))
-    row_length = np.add.reduceat(mesh.lengths, starts)
-    # z of the whole interval between rows at the nodes of its pieces
-    offset = (mesh.breaks[:-1] - mesh.breaks[starts][mesh.interval])[:, None] + mesh.lengths[:, None] * (1.0 + NODES) / 2.0
-    z = 2.0 * offset / row_length[mesh.interval][:, None] - 1.0
+    shift, stretch = _row_coordinate(plan)
+    z = shift[:, None] + stretch[:, None] * NODES
     weighted = remaining * WEIGHTS * (mesh.lengths / 2.0)[:, None]
     moments = np.stack([np.add.reduceat((weighted * z**j).sum(axis=1), starts) for j in range(4)])
     shape = plan.amounts_path

@@ -15,9 +15,9 @@ from ..assessment import Assessment
 from ..assumptions import Assumption, shown
 from ..bounded import Bounded
 from ..budget import Account, PresentValue, Reach
+from ..figures import amount, error, percent, significant
 from ..findings import Finding, Severity
 from ..text import visible
-from .figures import amount, error, percent, significant
 
 NARROW = 72
 """Below this many columns figures stand on lines of their own, since a table would have to shorten them."""
@@ -212,7 +212,7 @@ def _basis(a: Assessment, full: bool) -> Iterator[tuple[str, str]]:
     if a.slack.share_of_resources is not None:
         yield "Slack / lifetime resources", percent(a.slack.share_of_resources)
     if a.slack.consumption_scale is not None:
-        yield "Consumption that fits", f"all consumption × {a.slack.consumption_scale:.8g} exhausts the budget exactly"
+        yield "Consumption that fits", f"all consumption × {a.slack.consumption_scale:.7f} exhausts the budget exactly"
     if a.slack.level_per_year is not None:
         yield "Slack as a level amount", f"{significant(a.slack.level_per_year)} per household and year, real"
     if a.tail.kind != "none":

@@ -12,15 +12,14 @@ def amount(value: float, scale: float) -> str:
     if not 1e-9 < abs(scale) < 1e13:
         return significant(value)
     decimals = min(max(6 - math.floor(math.log10(abs(scale))), 0), 12)
-    written = f"{value:,.{decimals}f}".replace(",", " ")
-    return written.replace("-", "−")
+    return f"{value:,.{decimals}f}".replace("-", "−")
 
 
 def significant(value: float, digits: int = 6) -> str:
     """A figure to so many significant digits."""
     if value != 0.0 and 1.0 <= abs(value) < 1e13:
         decimals = max(digits - 1 - math.floor(math.log10(abs(value))), 0)
-        return f"{value:,.{decimals}f}".replace(",", " ").replace("-", "−")
+        return f"{value:,.{decimals}f}".replace("-", "−")
     return f"{value:.{digits}g}".replace("-", "−")
 
 
