@@ -97,7 +97,7 @@ def _transversality(plan: Plan, account: Account, decision: Decision) -> Conditi
         True: f"Nothing of value is left unused (limit {significant(account.slack.value, 3)}, within tolerance{speed}).",
         False: f"Something is {'left unused' if account.slack.value > 0 else 'missing'} for good: "
         f"{significant(account.slack.value)} per unit of human capital{speed}.",
-        None: f"Whether anything is left unused cannot be told at this accuracy (limit {significant(account.slack.value, 3)}{speed}).",
+        None: f"Whether anything is left unused cannot be told yet (limit {significant(account.slack.value, 3)}{speed}).",
     }[holds]
     limit = account.slack.value + account.terminal.value
     return Condition(holds=holds, limit=limit, rate_of_approach=rate, sentence=sentence)
