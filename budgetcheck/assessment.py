@@ -20,8 +20,8 @@ from .findings import Finding, InputRefused, NotAffordable, Severity, note, stop
 from .ledger import Ledger, keep
 from .paths import overshoots
 from .plan import OutOfRange, Plan, build
+from .quadrature import WEIGHTS, at_nodes
 from .rows import rows_of
-from .streams import Streams
 from .table import Table, from_frame, read_csv
 from .verdict import Decision, Errors, decide
 from .version import VERSION
@@ -66,9 +66,11 @@ class Tail:
 
 @dataclass(frozen=True, kw_only=True)
 class Span:
-    """What was read: file, number of rows, first and last date, and the end of the plan, as words; timing and path in words."""
+    """What was read: file, assumptions file if any, number of rows, first and last date, and the end of the plan, as words;
+    timing and path in words."""
 
     file: str
+    assumptions: str | None
     rows: int
     first: str
     last: str
@@ -130,7 +132,7 @@ def assess(
         account = budget(built)
     except OutOfRange as error:
         raise InputRefused([*found, stop("out-of-range", f"{error}.", file=ledger.file)]) from error
-    return _assessed(ledger, account, found)
+    return _assessed(ledger, account, found, stated.file)
 
 
 def _read(
@@ -216,7 +218,7 @@ def _built(ledger: Ledger, conventions: Conventions) -> tuple[Plan, list[Finding
     return plan, found
 
 
-def _assessed(ledger: Ledger, computed: Budget, found: list[Finding]) -> Assessment:
+def _assessed(ledger: Ledger, computed: Budget, found: list[Finding], source: str | None) -> Assessment:
     plan, unit = computed.plan, computed.unit.account
     open_path, open_tail = reconstruction(computed), tail(computed)
     path = wealth_path(computed, open_path)
@@ -232,7 +234,7 @@ def _assessed(ledger: Ledger, computed: Budget, found: list[Finding]) -> Assessm
     return Assessment(
         version=VERSION,
         input_sha256=ledger.sha256,
-        span=_span(ledger, plan),
+        span=_span(ledger, plan, source),
         verdict=decision.verdict,
         reason=decision.reason,
         would_decide=decision.would_decide,
@@ -284,11 +286,10 @@ def _slack(computed: Budget, decision: Decision) -> Slack:
 def _annuity(computed: Budget) -> float | None:
     """Present value of one unit of money a year, real, over the plan; None where a perpetual one has none."""
     plan = computed.plan
-    pieces = len(plan.mesh.lengths)
-    none = np.zeros((1, pieces))
-    one = Streams(p=np.ones((1, pieces, 1)), q=none[:, :, None], p_error=none, q_error=none)
     interest = computed.household.discount
-    value = float(one.restated(interest, sign=-1).integral(plan.mesh.lengths).value.sum())
+    value = float(plan.mesh.lengths.sum())
+    if interest is not None:
+        value = float((np.exp(-at_nodes(interest.coefficients)) @ WEIGHTS) @ plan.mesh.lengths / 2.0)
     if not plan.conventions.perpetual:
         return value
     rate = plan.interest.beyond
@@ -311,7 +312,7 @@ def _tail(plan: Plan, account: Account, estimate: TailEstimate) -> Tail:
     )
 
 
-def _span(ledger: Ledger, plan: Plan) -> Span:
+def _span(ledger: Ledger, plan: Plan, source: str | None) -> Span:
     c, date = plan.conventions, ledger.timeline.date
     reading = f"{c.timing} totals" if c.timing == "spread" else f"lump sums {c.timing}"
     if not c.periods:
@@ -319,6 +320,7 @@ def _span(ledger: Ledger, plan: Plan) -> Span:
     end = float(plan.mesh.breaks[-1])
     return Span(
         file=ledger.file,
+        assumptions=source,
         rows=len(ledger.lines),
         first=date(0.0),
         last=date(float(ledger.timeline.times[-1])),

@@ -113,17 +113,11 @@ def per_household(plan: Plan) -> Route:
 
 def per_unit(plan: Plan) -> Route:
     """Equation (2): streams restated per unit of human capital, then discounted with e^{−Λ}."""
-    growth, net = Exponent.constant(plan.growth, plan.mesh), discount(plan, plan.growth)
-    streams = restated_per_unit(plan.streams, plan, growth, net)
+    growth, net = plan.growth_exponent, discount(plan, plan.growth)
     factor, error = 1.0 / plan.scale.value, 3.0 * UNIT
+    streams = plan.streams.restated(growth, sign=-1, factor=factor, factor_error=error).restated(net, sign=-1)
     required = _required(plan, net, (growth,)).times(factor, error)
     return _route(plan, streams, net, plan.wealth.times(factor, error), required)
-
-
-def restated_per_unit(streams: Streams, plan: Plan, growth: Exponent | None, net: Exponent | None) -> Streams:
-    """Household money per unit of human capital, discounted with e^{−Λ}."""
-    factor, error = 1.0 / plan.scale.value, 3.0 * UNIT
-    return streams.restated(growth, sign=-1, factor=factor, factor_error=error).restated(net, sign=-1)
 
 
 def discount(plan: Plan, less: Rate) -> Exponent | None:

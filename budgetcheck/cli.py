@@ -8,7 +8,7 @@ import sys
 import tempfile
 from enum import StrEnum
 from pathlib import Path
-from typing import TYPE_CHECKING, Annotated
+from typing import IO, TYPE_CHECKING, Annotated
 
 import typer
 
@@ -139,12 +139,17 @@ def _rendered(result: Assessment | InputRefused, report: Report, *, width: int, 
     return terminal.render(result, width=width, color=color, full=full)
 
 
-def _write(stream: object, text: str) -> None:
+def _write(stream: IO[str], text: str) -> None:
     """Write, with a replacement for characters that the terminal's encoding does not have."""
     reconfigure = getattr(stream, "reconfigure", None)
     if reconfigure is not None:
         reconfigure(errors="replace")
-    typer.echo(text, file=stream, nl=False)  # type: ignore[arg-type]
+    try:
+        typer.echo(text, file=stream, nl=False)
+        stream.flush()
+    except BrokenPipeError:
+        # the reader has gone; the verdict's exit code is still right, and nothing more may be flushed into the pipe
+        os.dup2(os.open(os.devnull, os.O_WRONLY), stream.fileno())
 
 
 def _replace(target: Path, text: str) -> None:
@@ -166,10 +171,6 @@ def main() -> None:
     """Entry point: as `app`, but a fault of the program ends in one line and exit code 1, never in a traceback."""
     try:
         app()
-    except BrokenPipeError:
-        # the reader has gone; what it read was right
-        sys.stderr.close()
-        raise SystemExit(PASS) from None
     except Exception as fault:
         kind = type(fault).__name__
         sys.stderr.write(f"budgetcheck: a fault of the program, not of your input ({kind}: {fault}). Please report it.\n")

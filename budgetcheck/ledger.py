@@ -12,7 +12,7 @@ import numpy as np
 from .assumptions import Assumptions
 from .findings import Finding, InputRefused, stop
 from .keys import LATER
-from .numerals import Misread, explain, out_of_range, read_column
+from .numerals import MOST_MISREAD, Misread, explain, out_of_range, read_column
 from .quadrature import Floats
 from .table import Column, Table
 from .text import quoted
@@ -159,17 +159,19 @@ def _numbers(column: Column, role: str, table: Table) -> tuple[LedgerColumn, lis
         cells = column.cells or ()
         read = read_column(cells)
         problems = [_cell_finding(misread, column.header, cells[i], table, i) for i, misread in read.misread]
+        problems.extend(_uncounted(read.misread_count, column.header, table))
         values, halves = read.values, read.half_units
-        usable = bool(cells) and not any(i == len(cells) - 1 for i, _ in read.misread)
+        usable = bool(cells) and read.misread_count == 0
         last = Fraction(Decimal(cells[-1].strip(" \t").replace("\u2212", "-"))) if usable else Fraction(0)
         return LedgerColumn(column.header, role, values, halves, last), problems
     values = column.numbers
     with np.errstate(invalid="ignore"):
         bad = np.flatnonzero(~((np.abs(values) <= 1e15) & ((values == 0) | (np.abs(values) >= 1e-300))))
     problems = []
-    for i in bad:
+    for i in bad[:MOST_MISREAD]:
         misread = out_of_range(Decimal(repr(float(values[i])))) or explain(str(values[i]))
         problems.append(_cell_finding(misread, column.header, repr(float(values[i])), table, int(i)))
+    problems.extend(_uncounted(len(bad), column.header, table))
     last = Fraction(0) if len(bad) or not len(values) else Fraction(float(values[-1]))
     return LedgerColumn(column.header, role, values, None, last), problems
 
@@ -178,6 +180,14 @@ def _cell_finding(misread: Misread, header: str, raw: str, table: Table, index: 
     return stop(
         misread.rule, misread.message, file=table.file, row=table.lines[index], column=header, raw=raw, hint=misread.hint
     )
+
+
+def _uncounted(count: int, header: str, table: Table) -> list[Finding]:
+    """The rest of a column's unreadable cells, as a number."""
+    if count <= MOST_MISREAD:
+        return []
+    message = f"{count - MOST_MISREAD} more cells of this column are no figures, {count} in all."
+    return [stop("cell-number", message, file=table.file, column=header)]
 
 
 def _time_findings(time: LedgerColumn, table: Table) -> list[Finding]:
@@ -193,10 +203,10 @@ def _time_findings(time: LedgerColumn, table: Table) -> list[Finding]:
 
     if time.header.casefold() == "year":
         odd = (values != np.floor(values)) | (values < 1000) | (values > 9999)
-        for i in np.flatnonzero(odd):
+        for i in np.flatnonzero(odd)[:MOST_MISREAD]:
             found(int(i), "time-cell", "is not a calendar year of four digits; use a column 't' for other times.")
     closest = CLOSEST_ROWS * (values.max() - values.min())
-    for i in np.flatnonzero(~(np.diff(values) > closest)) + 1:
+    for i in np.flatnonzero(~(np.diff(values) > closest))[:MOST_MISREAD] + 1:
         before = f"line {table.lines[i - 1]}"
         if values[i] < values[i - 1]:
             found(int(i), "time-order", f"is earlier than {before}; sort the rows by time.")

@@ -22,6 +22,9 @@ LARGEST = 1e15
 LONGEST = 100
 """Characters in one figure."""
 
+MOST_MISREAD = 1000
+"""Cells of a column that are explained one by one; the rest is counted."""
+
 _FIGURE = re.compile(r"([+\-\u2212]?)([0-9]+(?:\.([0-9]*))?|\.([0-9]+))(?:[eE]([+-]?[0-9]{1,3}))?")
 _MISSING = frozenset({"", "-", "–", "—", "na", "n/a", "#n/a", "null", "none", "nil", ".", "..", "...", "?", "x"})
 _NOT_FINITE = re.compile(r"[+\-\u2212]?(?:nan|inf(?:inity)?|1\.#(?:inf|qnan|ind)|∞)", re.IGNORECASE)
@@ -39,11 +42,13 @@ class Misread:
 
 @dataclass(frozen=True, eq=False)
 class FigureColumn:
-    """values (n,) and half_units (n,), half a unit in the last printed digit; misread: index in the column and reason."""
+    """values (n,) and half_units (n,), half a unit in the last printed digit; misread: index in the column and reason, of the
+    first MOST_MISREAD; misread_count: of all."""
 
     values: Floats
     half_units: Floats
     misread: tuple[tuple[int, Misread], ...]
+    misread_count: int
 
 
 def exact(text: str) -> Fraction | Misread:
@@ -68,26 +73,31 @@ def out_of_range(figure: Decimal) -> Misread | None:
 
 
 def read_column(cells: Sequence[str]) -> FigureColumn:
-    """Read every cell of a column; nothing is guessed and nothing left out: what is no figure is in `misread`."""
+    """Read every cell of a column; nothing is guessed and nothing left out: what is no figure is counted, and explained."""
     values, halves = np.zeros(len(cells)), np.zeros(len(cells))
     misread: list[tuple[int, Misread]] = []
+    count = 0
     match = _FIGURE.fullmatch
     for index, cell in enumerate(cells):
         text = cell.strip(" \t")
         found = match(text) if len(text) <= LONGEST else None
         if found is None:
-            misread.append((index, explain(text)))
+            count += 1
+            if count <= MOST_MISREAD:
+                misread.append((index, explain(text)))
             continue
         sign, mantissa, after, only, power = found.groups()
         value = float(f"{mantissa}e{power}" if power else mantissa)
         if not value <= LARGEST or (value < 1e-300 and mantissa.strip("0.")):
             problem = out_of_range(Decimal(text.replace("\u2212", "-")))
             if problem is not None:
-                misread.append((index, problem))
+                count += 1
+                if count <= MOST_MISREAD:
+                    misread.append((index, problem))
             continue
         values[index] = value if sign in ("", "+") else -value
         halves[index] = int(power or 0) - len(after or only or "")
-    return FigureColumn(values=values, half_units=0.5 * 10.0**halves, misread=tuple(misread))
+    return FigureColumn(values=values, half_units=0.5 * 10.0**halves, misread=tuple(misread), misread_count=count)
 
 
 def explain(text: str) -> Misread:

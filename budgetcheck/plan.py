@@ -38,11 +38,11 @@ class OutOfRange(BudgetcheckError):
 class Plan:
     """Streams in household money on one mesh, with the rates that discount and restate them.
 
-    streams : one for each column of amounts, in their order; interest : r; growth : the
-    constant g + n; decays : for each column, r − g − n beyond the last row less the growth of its tail; scale : A(0)·L(0)/H;
+    streams : one for each column of amounts, in their order; interest : r; growth : the constant g + n, growth_exponent : its
+    integral; decays : for each column, r − g − n beyond the last row less the growth of its tail; scale : A(0)·L(0)/H;
     wealth : household money at t = 0; terminal, terminal_growth : the requirement at the end T of a finite plan is
-    terminal·exp(terminal_growth·T) in household money; path : the name of the interpolation, or "totals"; per_cell :
-    from a cell to a yearly rate or a lump sum, (m,) or 1.
+    terminal·exp(terminal_growth·T) in household money; path : the name of the interpolation, or "totals"; per_cell : from a cell
+    to a yearly rate or a lump sum, (m,) or 1.
     """
 
     rows: Rows
@@ -51,6 +51,7 @@ class Plan:
     streams: Streams
     interest: RatePath
     growth: Rate
+    growth_exponent: Exponent | None
     decays: tuple[Rate, ...]
     scale: Bounded
     wealth: Bounded
@@ -67,9 +68,11 @@ class Plan:
 
     def split(self, mask: Mask) -> Plan:
         """The same plan on the halved mesh."""
+        mesh = self.mesh.split(mask)
         return replace(
             self,
-            mesh=self.mesh.split(mask),
+            mesh=mesh,
+            growth_exponent=Exponent.constant(self.growth, mesh),
             streams=self.streams.split(mask),
             interest=self.interest.split(mask),
         )
@@ -87,7 +90,10 @@ def build(rows: Rows, conventions: Conventions, path: str) -> Plan:
     growth = c.g + c.n
     net = interest.beyond - growth
     decay = {"income": net - c.income_growth, "consumption": net - c.consumption_growth}
-    exponent, factor = Exponent.constant(basis_rate(c, c.basis), mesh), float(basis_factor(c, c.basis))
+    growth_exponent = Exponent.constant(growth, mesh)
+    own = c.basis == "per effective unit"
+    exponent = growth_exponent if own else Exponent.constant(basis_rate(c, c.basis), mesh)
+    factor = float(basis_factor(c, c.basis))
     return Plan(
         rows=rows,
         conventions=c,
@@ -95,6 +101,7 @@ def build(rows: Rows, conventions: Conventions, path: str) -> Plan:
         streams=streams.restated(exponent, factor=factor, factor_error=UNIT),
         interest=interest,
         growth=growth,
+        growth_exponent=growth_exponent,
         decays=tuple(decay[amounts.role] for amounts in rows.amounts),
         scale=_read(c.productivity * c.members),
         wealth=_read(c.wealth * basis_factor(c, c.wealth_basis)),

@@ -147,7 +147,8 @@ def integrate(p: Floats, q: Floats, lengths: Floats, *, p_error: Floats, q_error
     relative = in_exponent + UNIT * (p_steps + POINTS + 6)
     gross = mass * size
     bound = gross * relative + mass * p_error + truncation
-    target = np.maximum(gross, gross.mean(axis=-1, keepdims=True))
+    mean = np.add.reduce(gross, axis=-1, keepdims=True) / gross.shape[-1]
+    target = np.maximum(gross, mean)
     return Integral(
         value=value,
         bound=bound * SAFETY + (size + 1.0) * (lengths * UNDERFLOW),

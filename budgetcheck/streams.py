@@ -27,6 +27,11 @@ class Mesh:
     lengths: Floats
     interval: NDArray[np.intp]
 
+    @property
+    def row_starts(self) -> NDArray[np.intp]:
+        """The first piece of each interval between rows."""
+        return np.flatnonzero(np.diff(self.interval, prepend=-1))
+
     def split(self, mask: Mask) -> Mesh:
         """Halve the intervals under the mask, (m,)."""
         times = np.where(mask, 2, 1)

@@ -26,6 +26,9 @@ if TYPE_CHECKING:
 MOST_BYTES = 1 << 30
 MOST_COLUMNS = 1000
 LONGEST_HEADER = 1000
+MOST_RAGGED = 1000
+"""Ragged rows that are named one by one."""
+
 STANDARD_INPUT = "-"
 
 
@@ -127,12 +130,14 @@ def _table_of(rows: list[tuple[int, list[str]]], name: str, sha256: str) -> Tabl
     line, header = rows[0]
     findings = _header_findings(header, line, name)
     width = len(header)
-    for line, record in rows[1:]:
-        if len(record) != width:
-            message = f"has {len(record)} cells where the header has {width};"
-            hint = "give every row one cell for each column (a number with a comma in it needs quotes)."
-            shown = ",".join(record[: width + 2])
-            findings.append(stop("structure", message, file=name, row=line, raw=shown, hint=hint))
+    ragged = [(line, record) for line, record in rows[1:] if len(record) != width]
+    for line, record in ragged[:MOST_RAGGED]:
+        message = f"has {len(record)} cells where the header has {width};"
+        hint = "give every row one cell for each column (a number with a comma in it needs quotes)."
+        shown = ",".join(record[: width + 2])
+        findings.append(stop("structure", message, file=name, row=line, raw=shown, hint=hint))
+    if len(ragged) > MOST_RAGGED:
+        findings.append(stop("structure", f"{len(ragged) - MOST_RAGGED} more rows have another width.", file=name))
     if findings:
         raise InputRefused(findings)
     records = [record for _, record in rows[1:]]

@@ -1,7 +1,7 @@
 """An exact second opinion: present values and slack of a plan as rigorous balls, from the printed figures alone.
 
-Nothing of the package is used. Figures are read as rationals, the spline is solved in rationals by its second derivatives, every
-integral is a closed form (Kummer's function) or a ball from adaptive rigorous quadrature, all at 200 bits. From the definitions:
+Nothing of the package is used. Figures are read as rationals, the spline is solved in rationals by its second derivatives, and
+every integral is a closed form (Kummer's function) or a ball from adaptive rigorous quadrature, all at 200 bits. By definition:
 
     discounted stream per unit of human capital = factor·y(t)·exp(−(R(t) − νt))
 
@@ -122,7 +122,9 @@ def read(text: str, tree: Mapping[str, Mapping[str, Any]]) -> Table:
     declared = tree.get("columns", {})
     roles = {head: str(declared.get(head, ROLES.get(head, ""))) for head in header}
     cells = {
-        head: [figure(record[i]) for record in records] for i, head in enumerate(header) if roles[head] not in ("ignore", "time")
+        head: [figure(record[i]) for record in records]
+        for i, head in enumerate(header)
+        if roles[head] not in ("ignore", "time")
     }
     (kind,) = (head for head in header if roles[head] == "time")
     dates = [figure(record[header.index(kind)]) for record in records]

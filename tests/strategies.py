@@ -12,7 +12,7 @@ LARGEST_EXPONENT = 690.0
 PRECISE = 16
 """Significant digits of figures where rounding before printing would itself make a wild path."""
 
-_CONVERSIONS = {"continuous": 1, "annual": 1, "semiannual": 2, "quarterly": 4, "monthly": 12, "daily": 365}
+_CONVERSIONS = ("annual", "semiannual", "quarterly", "monthly", "daily")
 _WORDS = {
     "timing": ("continuous", "spread", "in advance", "in arrears", "at mid-period"),
     "path": ("step", "linear", "geometric", "smooth"),
@@ -43,7 +43,9 @@ def draw(seed: int) -> Sample:
 class _Draw:
     def __init__(self, rng: Random) -> None:
         self.rng = rng
-        self.tree: dict[str, dict[str, Any]] = {s: {} for s in ("market", "growth", "household", "amounts", "horizon", "columns")}
+        self.tree: dict[str, dict[str, Any]] = {
+            s: {} for s in ("market", "growth", "household", "amounts", "horizon", "columns")
+        }
 
     def sample(self) -> Sample:
         rng = self.rng
@@ -53,10 +55,10 @@ class _Draw:
         self._time()
         self._amounts()
         self._exponents()
-        columns = [self.dates, *self._flows()]
-        columns.extend(self._interest())
-        self._household()
+        self._growth()
         self._horizon()
+        columns = [self.dates, *self._flows(), *self._interest()]
+        self._household()
         rng.shuffle(columns)
         text = "\n".join(",".join(record) for record in zip(*columns, strict=True)) + "\n"
         return Sample(text=text, assumptions={k: v for k, v in self.tree.items() if v})
@@ -105,38 +107,47 @@ class _Draw:
         """How large R and the growth exponents become over the rows: a few units mostly, up to all that is supported."""
         rng = self.rng
         self.magnitude = rng.uniform(-12.0, 14.9) if rng.random() < 0.5 else rng.uniform(0.0, 6.0)
-        room = LARGEST_EXPONENT - 25.0 - max(0.0, (self.magnitude + 6.0) * math.log(10.0) + math.log(max(self.end, 1.0)))
-        room = min(room, 600.0)
-        reach = rng.choice((rng.uniform(0.0, 4.0), rng.uniform(0.0, 4.0), rng.uniform(4.0, 60.0), room))
-        self.largest_rate = min(0.5 * min(reach, room) / self.end, 30.0)
-        self.growth_room = min(0.2 * min(reach, room) / self.end, 0.9)
+        room = LARGEST_EXPONENT - 30.0 - max(0.0, (self.magnitude + 6.0) * math.log(10.0) + math.log(max(self.end, 1.0)))
+        reach = rng.choice((rng.uniform(0.0, 4.0), rng.uniform(0.0, 4.0), rng.uniform(4.0, 60.0), room * rng.uniform(0.3, 1.1)))
+        self.largest_rate = min(0.7 * min(reach, room) / self.end, 30.0)
+        self.growth_room = min(0.15 * min(reach, room) / self.end, 0.3)
 
     def _rate(self, largest: float) -> Decimal:
         """A rate with few digits or many, of either sign, within 1e-13 of zero now and then."""
         rng = self.rng
         kind = rng.random()
-        if kind < 0.12:
+        if kind < 0.08:
             return Decimal(0)
-        if kind < 0.24:
+        if kind < 0.16:
             return Decimal(f"{rng.choice((-1, 1)) * min(10.0 ** rng.uniform(-16, -13), largest):.3e}")
         size = largest * rng.uniform(0.2, 1.0) * (1 if rng.random() < 0.7 else -0.9)
-        return Decimal(f"{max(size, -0.85):.{rng.choice((1, 2, 4, 14))}e}")
+        return Decimal(f"{max(size, -0.5):.{rng.choice((1, 2, 4, 14))}e}")
 
-    def _interest(self) -> list[list[str]]:
-        """r, declared or as a column, ordinary or next to g + n, under any compounding."""
+    def _growth(self) -> None:
+        """g and n, under the compounding of r or their own."""
         rng = self.rng
-        self.compounding = rng.choice(("continuous", *_CONVERSIONS))
-        if self.compounding != "continuous" or rng.random() < 0.5:
-            self.tree["market"]["compounding"] = self.compounding
+        compounding = rng.choice(("continuous", *_CONVERSIONS))
+        if compounding != "continuous" or rng.random() < 0.5:
+            self.tree["market"]["compounding"] = compounding
+        if rng.random() < 0.3:
+            self.tree["growth"]["compounding"] = rng.choice(_CONVERSIONS)
         for name in ("g", "n"):
             if rng.random() < 0.7:
                 self.tree["growth"][name] = self._rate(self.growth_room)
-        if rng.random() < 0.3:
-            self.tree["growth"]["compounding"] = rng.choice(tuple(_CONVERSIONS))
+
+    def _interest(self) -> list[list[str]]:
+        """r, declared or as a column, ordinary or next to g + n; a few perpetual plans diverge."""
+        rng = self.rng
         growth = sum((self.tree["growth"].get(name, Decimal(0)) for name in ("g", "n")), Decimal(0))
         tie = rng.random() < 0.2
-        offset = Decimal(f"{rng.choice((-1, 1, 1)) * 10.0 ** rng.uniform(-16, -13):.2e}")
-        base = Context(prec=40).add(growth, offset) if tie else self._rate(self.largest_rate)
+        if tie:
+            offset = Decimal(f"{rng.choice((-1, 1, 1, 1)) * 10.0 ** rng.uniform(-16, -13):.2e}")
+            base = Context(prec=40).add(growth, offset)
+        else:
+            base = self._rate(self.largest_rate)
+            if self.tree["horizon"]["kind"] == "perpetual" and rng.random() < 0.9:
+                tails = (self.tree["horizon"].get(name, Decimal(0)) for name in ("income_growth", "consumption_growth"))
+                base = Decimal(f"{1.3 * float(growth + max(*tails, Decimal(0))) + abs(float(base)):.{rng.randint(2, 15)}e}")
         if rng.random() < 0.5:
             self.tree["market"]["r"] = base
             return []
@@ -157,14 +168,14 @@ class _Draw:
         heads = [("wage", "income")] if rng.random() < 0.7 else [("Gross pay", "income"), ("Pension", "income")]
         heads.append(("consumption", "consumption"))
         if rng.random() < 0.2:
-            heads.append(("Rent, net".replace(",", ""), "consumption"))
+            heads.append(("Rent, net", "consumption"))
         if rng.random() < 0.1:
             heads.append(("Note", "ignore"))
         columns = []
         for head, role in heads:
             if head not in ("wage", "consumption"):
                 self.tree["columns"][head] = role
-            columns.append([head, *self._figures(allow_negative=role == "income")])
+            columns.append([f'"{head}"' if "," in head else head, *self._figures(allow_negative=role == "income")])
         return columns
 
     def _figures(self, *, allow_negative: bool) -> list[str]:

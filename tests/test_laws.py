@@ -174,7 +174,8 @@ def test_weights_give_the_present_values(case: Case) -> None:
 @given(st.lists(st.tuples(amounts, amounts, amounts), min_size=2, max_size=8), rates, timings)
 def test_a_column_may_be_divided(rows: list[tuple[float, float, float]], r: float, timing: str) -> None:
     """Two columns of a role are worth what their sum is worth, each with its own present value."""
-    stated = {"market": {"r": r}, "amounts": {"timing": timing}, "horizon": {"kind": "finite", "terminal_wealth": 0}}
+    stated: dict[str, Any] = {"market": {"r": r}, "horizon": {"kind": "finite", "terminal_wealth": 0}}
+    stated["amounts"] = {"timing": timing, **({"path": "smooth"} if timing == "continuous" else {})}
     first, second, consumed = zip(*rows, strict=True)
     parts = pd.DataFrame({"t": range(len(rows)), "wage": first, "pension": second, "consumption": consumed})
     summed = parts.assign(wage=[a + b for a, b in zip(first, second, strict=True)]).drop(columns="pension")

@@ -40,6 +40,7 @@ def render(assessment: Assessment) -> str:
         "units": UNITS,
         "plan": {
             "file": visible(a.span.file),
+            "assumptions": a.span.assumptions,
             "rows": a.span.rows,
             "first": a.span.first,
             "last": a.span.last,

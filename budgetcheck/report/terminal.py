@@ -52,7 +52,8 @@ def render(assessment: Assessment, *, width: int = 80, color: bool = False, full
     page.pairs(tuple(_conditions(a)))
     page.heading("What the verdict rests on")
     page.pairs(tuple(_basis(a, full)))
-    page.heading("Assumptions (and where each comes from)")
+    source = f" from {visible(a.span.assumptions)}" if a.span.assumptions else ""
+    page.heading(f"Assumptions{source} (and where each comes from)")
     page.pairs(tuple(_assumptions(a.assumptions)))
     rest = [finding for finding in a.findings if full or finding.severity is not Severity.WARN]
     if rest:
