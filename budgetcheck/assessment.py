@@ -124,10 +124,9 @@ def assess(
     shape; by default the file beside the plan with the ending .toml, if there is one. options: figures by option name that
     override it. Raises InputRefused, with every fault found, where the input cannot be assessed.
     """
-    ledger, stated = _read(plan, assumptions, options)
-    conventions, found = _settled(ledger, stated)
+    ledger, stated, conventions, found = _read(plan, assumptions, options)
     built, more = _built(ledger, conventions)
-    found = [*stated.findings, *found, *more]
+    found = [*found, *more]
     try:
         account = budget(built)
     except OutOfRange as error:
@@ -137,30 +136,36 @@ def assess(
 
 def _read(
     plan: pd.DataFrame | str | Path, source: assumptions_module.Source, options: dict[str, str] | None
-) -> tuple[Ledger, Assumptions]:
-    """Table and assumptions; the faults of both are reported together."""
-    faults: list[Finding] = []
+) -> tuple[Ledger, Assumptions, Conventions, list[Finding]]:
+    """Table, assumptions and the conventions they settle; the faults of all are reported together."""
+    found: list[Finding] = []
     table: Table | None = None
     stated: Assumptions | None = None
     try:
         table = read_csv(plan) if isinstance(plan, (str, Path)) else from_frame(plan)
     except InputRefused as refused:
-        faults.extend(refused.findings)
+        found.extend(refused.findings)
     try:
         stated = assumptions_module.read(_beside(plan) if source is None else source, options)
-        faults.extend(finding for finding in stated.findings if finding.severity is Severity.STOP)
+        found.extend(stated.findings)
     except InputRefused as refused:
-        faults.extend(refused.findings)
-    if table is not None:
-        try:
-            ledger = keep(table, stated or assumptions_module.NONE)
-            if stated is not None and not faults:
-                return ledger, stated
-        except InputRefused as refused:
-            # what an unreadable assumptions file might have said of roles and rates is not held against the table
-            excused = ("header-role", "rate-missing") if stated is None else ()
-            faults.extend(finding for finding in refused.findings if finding.rule not in excused)
-    raise InputRefused(faults)
+        found.extend(refused.findings)
+    if table is None:
+        raise InputRefused(found)
+    ledger = keep(table, stated or assumptions_module.NONE)
+    # what an unreadable assumptions file might have said of roles and rates is not held against the table
+    excused = ("header-role", "rate-missing") if stated is None else ()
+    found.extend(finding for finding in ledger.findings if finding.rule not in excused)
+    if stated is None:
+        raise InputRefused(found)
+    found.extend(audit(ledger, stated))
+    try:
+        conventions = settle(ledger, stated)
+    except InputRefused as refused:
+        found.extend(refused.findings)
+    if any(finding.severity is Severity.STOP for finding in found):
+        raise InputRefused(found)
+    return ledger, stated, conventions, found
 
 
 def _beside(plan: object) -> Path | None:
@@ -172,23 +177,6 @@ def _beside(plan: object) -> Path | None:
         return beside if beside.is_file() else None
     except (OSError, ValueError):
         return None
-
-
-def _settled(ledger: Ledger, stated: Assumptions) -> tuple[Conventions, list[Finding]]:
-    faults: list[Finding] = []
-    found: list[Finding] = []
-    conventions = None
-    try:
-        conventions = settle(ledger, stated)
-    except InputRefused as refused:
-        faults.extend(refused.findings)
-    try:
-        found.extend(audit(ledger, stated))
-    except InputRefused as refused:
-        faults.extend(refused.findings)
-    if conventions is None or faults:
-        raise InputRefused(faults)
-    return conventions, found
 
 
 def _built(ledger: Ledger, conventions: Conventions) -> tuple[Plan, list[Finding]]:
@@ -249,7 +237,7 @@ def _assessed(ledger: Ledger, computed: Budget, found: list[Finding], source: st
         tail=_tail(plan, unit, open_tail),
         assumptions=plan.conventions.entries,
         findings=worst_first(found),
-        date=ledger.timeline.date,
+        date=plan.rows.timeline.date,
     )
 
 
@@ -313,7 +301,8 @@ def _tail(plan: Plan, account: Account, estimate: TailEstimate) -> Tail:
 
 
 def _span(ledger: Ledger, plan: Plan, source: str | None) -> Span:
-    c, date = plan.conventions, ledger.timeline.date
+    c, timeline = plan.conventions, plan.rows.timeline
+    date = timeline.date
     reading = f"{c.timing} totals" if c.timing == "spread" else f"lump sums {c.timing}"
     if not c.periods:
         reading = f"yearly rates, {plan.path} path between rows"
@@ -323,7 +312,7 @@ def _span(ledger: Ledger, plan: Plan, source: str | None) -> Span:
         assumptions=source,
         rows=len(ledger.lines),
         first=date(0.0),
-        last=date(float(ledger.timeline.times[-1])),
+        last=date(float(timeline.times[-1])),
         end="perpetual" if c.perpetual else f"ends at {date(end)}",
         reading=reading,
     )

@@ -16,8 +16,8 @@ from typing import Any
 
 from .findings import Finding, InputRefused, note, stop
 from .keys import BY_PATH, KEYS, LATER, LATER_KEYS, OPTIONS, ROLES, SECTIONS, Key
-from .numerals import LARGEST, Misread, exact, out_of_range
-from .text import quoted, visible
+from .numerals import LARGEST, LONGEST, Misread, exact, out_of_range
+from .text import folded, quoted, visible
 
 MOST_BYTES = 1 << 20
 DEEPEST = 8
@@ -36,12 +36,14 @@ class Origin(StrEnum):
 
 @dataclass(frozen=True, kw_only=True)
 class Assumption:
-    """One value in force: the key's path, the value (a word or an exact figure), its unit and its origin."""
+    """One value in force: the key's path, the value (a word or an exact figure), its unit, its origin and, from a file, its
+    line."""
 
     key: str
     value: str | Fraction
     unit: str
     origin: Origin
+    row: int | None = None
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -153,20 +155,23 @@ class _Reading:
         self.attempted: set[str] = set()
 
     def _line(self, section: str, key: str | None = None) -> int | None:
-        """The line on which a key stands; a search in the text, since the parser does not keep places."""
+        """The line on which a key stands; a search in the text, since the parser does not keep places.
+
+        A key stands under its [section], or at the top as section.key = … or section = {key = …}.
+        """
         current = ""
         for number, line in enumerate(self.lines, start=1):
-            header = re.match(r"\s*\[\s*\"?([^\]\"]*?)\"?\s*\]", line)
+            header = re.match(r"\s*\[\s*[\"']?(.*?)[\"']?\s*\]", line)
             if header:
                 current = header.group(1)
                 if current == section and key is None:
                     return number
-            elif key is not None and current == section and re.match(rf"\s*[\"']?{re.escape(key)}[\"']?\s*=", line):
+            elif _states(line, section, key, current):
                 return number
         return None
 
     def _stop(self, message: str, section: str, key: str | None = None, raw: object = None, hint: str | None = None) -> None:
-        self.attempted.add(f"{section}.{key}")
+        self.attempted.add(f"{section}.{folded(key or '')}")
         shown = None if raw is None else _shown(raw)
         row = self._line(section, key)
         self.stops.append(stop("assumption", message, file=self.name, row=row, column=key or section, raw=shown, hint=hint))
@@ -203,7 +208,8 @@ class _Reading:
 
     def _word(self, key: Key, value: object) -> Assumption | None:
         if isinstance(value, str) and value in key.choices:
-            return Assumption(key=key.path, value=value, unit="", origin=Origin.FILE)
+            row = self._line(key.section, key.name)
+            return Assumption(key=key.path, value=value, unit="", origin=Origin.FILE, row=row)
         if isinstance(value, str) and value in key.later:
             self._stop(f"{LATER}; it takes {_listed(key.choices)}.", key.section, key.name, raw=value)
         else:
@@ -225,22 +231,28 @@ class _Reading:
             percent = " A rate is a fraction: 0.05 for 5 %." if key.unit == "1/year" else ""
             self._stop(f"is out of range; this key takes {allowed}.{percent}", key.section, key.name, raw=value)
             return None
-        return Assumption(key=key.path, value=figure, unit=key.unit, origin=origin)
+        row = self._line(key.section, key.name) if origin is Origin.FILE else None
+        return Assumption(key=key.path, value=figure, unit=key.unit, origin=origin, row=row)
 
     def columns(self, body: object) -> tuple[tuple[str, str], ...]:
         """Headers and their roles."""
         if not isinstance(body, Mapping):
             return ()
         roles: list[tuple[str, str]] = []
+        seen: set[str] = set()
         for header, role in body.items():
             header = str(header).strip()
-            if isinstance(role, str) and role in ROLES:
+            if folded(header) in seen:
+                hint = "keep one of the entries; headers are compared without case and blanks."
+                self._stop("is given a role twice;", "columns", header, raw=role, hint=hint)
+            elif isinstance(role, str) and role in ROLES:
                 roles.append((header, role))
             elif role == "deduction" or isinstance(role, Mapping):
                 self._stop(f"{LATER}; it takes {_listed(ROLES)}.", "columns", header, raw=role)
             else:
                 hint = _nearest(role, ROLES, "role") if isinstance(role, str) else f"Write {_listed(ROLES)}."
                 self._stop("is no role of a column;", "columns", header, raw=role, hint=hint)
+            seen.add(folded(header))
         return tuple(roles)
 
     def options(self, declared: dict[str, Assumption], options: Mapping[str, str]) -> dict[str, Assumption]:
@@ -262,7 +274,19 @@ class _Reading:
         return result
 
 
+_SMALLEST = Fraction(1, 10**300)
 _NO_NUMBER = Misread("assumption", "is not a number;", "write a plain number, without quotes.")
+
+
+def _states(line: str, section: str, key: str | None, current: str) -> bool:
+    """Whether a line of TOML under the section `current` states the key, or for None anything of the section."""
+    outer, inner = (rf"[\"']?{re.escape(name)}[\"']?" for name in (section, key or ""))
+    if key is not None and current == section:
+        return re.match(rf"\s*{inner}\s*=", line) is not None
+    if current:
+        return False
+    within = rf"\s*(\.\s*|=\s*\{{(.*,)?\s*){inner}\s*=" if key is not None else r"\s*[.=]"
+    return re.match(rf"\s*{outer}{within}", line) is not None
 
 
 def _exact(value: object) -> Fraction | Misread:
@@ -272,10 +296,15 @@ def _exact(value: object) -> Fraction | Misread:
     if isinstance(value, str):
         return exact(value)
     if isinstance(value, Decimal):
+        if len(value.as_tuple().digits) > LONGEST:
+            return Misread("assumption", f"has more than {LONGEST} digits;", "write the figure.")
         return out_of_range(value) or Fraction(value)
     if isinstance(value, Rational):
         figure = Fraction(int(value.numerator), int(value.denominator))
-        return figure if abs(figure) <= Fraction(10**15) else out_of_range(Decimal("1e16")) or _NO_NUMBER
+        beyond = abs(figure) > Fraction(10**15) or (figure != 0 and abs(figure) < _SMALLEST)
+        # the same words as for a printed figure beyond the range on that side
+        example = Decimal("1e16") if abs(figure) > 1 else Decimal("1e-301")
+        return (out_of_range(example) or _NO_NUMBER) if beyond else figure
     if isinstance(value, Real):
         # the decimal figure that Python prints is what was meant: 0.05 is five hundredths
         decimal = Decimal(repr(float(value)))
@@ -294,7 +323,10 @@ def shown(value: str | Fraction) -> str:
 
 
 def _shown(raw: object) -> str:
-    return str(raw)[:200] if isinstance(raw, (str, int, float, Decimal, bool, Fraction)) else type(raw).__name__
+    """A raw value in a message; numbers of thousands of digits and nested values by their kind."""
+    if isinstance(raw, (int, Fraction)) and not -(10**30) <= raw <= 10**30:
+        return "a number of more than 30 digits"
+    return str(raw)[:200] if isinstance(raw, (str, int, float, Decimal, Fraction)) else type(raw).__name__
 
 
 def _listed(words: tuple[str, ...]) -> str:

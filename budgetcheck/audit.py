@@ -11,7 +11,7 @@ from collections.abc import Callable, Iterator
 import numpy as np
 
 from .assumptions import Assumptions
-from .findings import Finding, InputRefused, note, stop, warn
+from .findings import Finding, note, stop, warn
 from .ledger import Ledger, LedgerColumn
 from .rates import CONVERSIONS
 from .text import quoted
@@ -27,11 +27,8 @@ Rule = Callable[[Ledger, Assumptions], Iterator[Finding]]
 
 
 def audit(ledger: Ledger, assumptions: Assumptions) -> tuple[Finding, ...]:
-    """Every finding of every rule. Raises InputRefused, with all of them, where one is a stop."""
-    findings = [finding for rule in RULES for finding in rule(ledger, assumptions)]
-    if any(finding.severity == "stop" for finding in findings):
-        raise InputRefused(findings)
-    return tuple(findings)
+    """Every finding of every rule."""
+    return tuple(finding for rule in RULES for finding in rule(ledger, assumptions))
 
 
 def _cells(ledger: Ledger, column: LedgerColumn, wrong: np.ndarray, rule: str, message: str, hint: str) -> Iterator[Finding]:
@@ -105,9 +102,10 @@ def _horizon(_: Ledger, assumptions: Assumptions) -> Iterator[Finding]:
     keys = ("horizon.kind", "horizon.terminal_wealth")
     perpetual = assumptions.word("horizon.kind") == "perpetual"
     missing = [key for key in keys if assumptions.stated(key) is None]
-    if perpetual and assumptions.stated("horizon.terminal_wealth") is not None:
+    required = assumptions.stated("horizon.terminal_wealth")
+    if perpetual and required is not None:
         message = "a perpetual plan has no end at which terminal_wealth could be required; remove the key."
-        yield stop("assumption", message, file=assumptions.file, column="terminal_wealth")
+        yield stop("assumption", message, file=assumptions.file, row=required.row, column="terminal_wealth")
     elif missing and not perpetual:
         message = (
             "the plan is taken to end with its table, with nothing required at the end: "
@@ -121,16 +119,19 @@ def _keys_without_effect(_: Ledger, assumptions: Assumptions) -> Iterator[Findin
     growing = assumptions.word("horizon.tail") == "growing"
     perpetual = assumptions.word("horizon.kind") == "perpetual"
     for key in ("horizon.income_growth", "horizon.consumption_growth"):
-        if assumptions.stated(key) is not None and not growing:
-            yield stop("assumption", f'{key} needs tail = "growing".', file=assumptions.file, column=key)
-        elif assumptions.stated(key) is None and growing:
+        stated = assumptions.stated(key)
+        if stated is not None and not growing:
+            yield stop("assumption", f'{key} needs tail = "growing".', file=assumptions.file, row=stated.row, column=key)
+        elif stated is None and growing and key not in assumptions.attempted:
             yield stop("assumption", f'tail = "growing" needs {key}.', file=assumptions.file, column=key)
-    if assumptions.stated("horizon.tail") is not None and not perpetual:
-        yield stop("assumption", 'a tail needs kind = "perpetual".', file=assumptions.file, column="tail")
+    tail = assumptions.stated("horizon.tail")
+    if tail is not None and not perpetual:
+        yield stop("assumption", 'a tail needs kind = "perpetual".', file=assumptions.file, row=tail.row, column="tail")
     for key in ("preferences.rho", "preferences.theta"):
-        if assumptions.stated(key) is not None:
+        stated = assumptions.stated(key)
+        if stated is not None:
             message = f"{key} does not enter the verdict: the plan is discounted with the market interest rate."
-            yield note("preferences", message, file=assumptions.file, column=key)
+            yield note("preferences", message, file=assumptions.file, row=stated.row, column=key)
 
 
 RULES: tuple[Rule, ...] = (_sign, _geometric, _rate_cells, _percent, _horizon, _keys_without_effect)

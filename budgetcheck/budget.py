@@ -24,6 +24,9 @@ from .quadrature import EXP_ERROR, MOST_HALVINGS, SAFETY, UNIT, Floats, Integral
 from .rates import Rate
 from .streams import Exponent, Mesh, RatePath, Streams
 
+NEAR_TIE = 10.0
+"""A decay of fewer than this many times its own rounding is not told from a tie: its reciprocal would mean nothing."""
+
 
 class Reach(StrEnum):
     """What is known of a present value over an unlimited horizon."""
@@ -208,8 +211,10 @@ def tail_values(
     for k, decay in enumerate(plan.decays):
         if not tail.flows[k]:
             result.append((ZERO, Reach.FINITE))
-        elif decay.sign is None or decay.sign <= 0:
-            result.append((ZERO, Reach.UNKNOWN if decay.sign is None else Reach.INFINITE))
+        elif decay.sign is None or 0.0 < decay.value < NEAR_TIE * decay.error:
+            result.append((ZERO, Reach.UNKNOWN))
+        elif decay.sign <= 0:
+            result.append((ZERO, Reach.INFINITE))
         elif tail.period is None:
             level = Bounded(float(levels[k]), float(errors[k]))
             result.append((_perpetuity(level, decay), Reach.FINITE))
@@ -230,17 +235,15 @@ def _last_period(mesh: Mesh, integral: Integral, lumps: tuple[Floats, Floats] | 
 
 
 def _perpetuity(level: Bounded, decay: Rate) -> Bounded:
-    """level/decay, decay > 0; a relative error x of the divisor is one of at most x/(1 − x) of the quotient."""
+    """level/decay, decay > 0; a relative error x ≤ 1/10 of the divisor is one of at most x/(1 − x) < 2x of the quotient."""
     relative = decay.error / decay.value
-    if relative >= 0.5:
-        return Bounded(level.value / decay.value, math.inf)
     return level.times(1.0 / decay.value, 2.0 * relative + 2.0 * UNIT)
 
 
 def _repetition(base: Bounded, decay: Rate, period: float) -> Bounded:
     """base/(e^{decay·period} − 1); the condition number of 1/expm1(x) is x·e^x/(e^x − 1) ≤ 1 + x."""
-    x = min(decay.value * period, LARGEST_EXPONENT)
+    x = decay.value * period
+    if x > LARGEST_EXPONENT:
+        return Bounded(0.0, (abs(base.value) + base.bound) * math.exp(-LARGEST_EXPONENT))
     relative = decay.error / decay.value
-    if relative >= 0.1:
-        return Bounded(base.value / math.expm1(x), math.inf)
     return base.times(1.0 / math.expm1(x), 2.0 * (relative + 4.0 * UNIT) * (1.0 + x) + EXP_ERROR * SAFETY)

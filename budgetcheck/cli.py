@@ -6,12 +6,16 @@ import os
 import shutil
 import sys
 import tempfile
+from collections.abc import Iterator
+from contextlib import contextmanager
 from enum import StrEnum
 from pathlib import Path
-from typing import IO, TYPE_CHECKING, Annotated
+from typing import IO, TYPE_CHECKING, Annotated, Any
 
 import typer
+from typer.core import TyperGroup
 
+from .text import visible
 from .version import VERSION
 
 if TYPE_CHECKING:
@@ -21,8 +25,35 @@ if TYPE_CHECKING:
 PASS, FAULT, USAGE, FAIL, UNDECIDED, REFUSED = 0, 1, 2, 3, 4, 5
 EXIT_CODES = {"PASS": PASS, "FAIL": FAIL, "UNDECIDED": UNDECIDED}
 
+
+class _Group(TyperGroup):
+    """A group whose complaints about wrong usage show arguments with their hidden characters made visible."""
+
+    def make_context(self, *arguments: Any, **options: Any) -> Any:
+        """As inherited, for options of the group itself."""
+        with _made_visible():
+            return super().make_context(*arguments, **options)
+
+    def invoke(self, ctx: Any) -> Any:
+        """As inherited, for commands and their options."""
+        with _made_visible():
+            return super().invoke(ctx)
+
+
+@contextmanager
+def _made_visible() -> Iterator[None]:
+    try:
+        yield
+    except Exception as error:
+        message = getattr(error, "message", None)
+        if isinstance(message, str):
+            error.message = visible(message, 400)  # type: ignore[attr-defined]
+        raise
+
+
 app = typer.Typer(
     name="budgetcheck",
+    cls=_Group,
     help="Decide whether a household's planned consumption is affordable over its whole life.",
     no_args_is_help=True,
     pretty_exceptions_enable=False,

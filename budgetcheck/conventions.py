@@ -11,6 +11,7 @@ from .findings import Finding, InputRefused, stop
 from .keys import BY_PATH
 from .ledger import Ledger
 from .rates import Rate
+from .text import folded
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -58,7 +59,7 @@ class Conventions:
 
 def settle(ledger: Ledger, assumptions: Assumptions) -> Conventions:
     """Fill in the defaults that depend on the table. Raises InputRefused where two declarations contradict each other."""
-    timing = assumptions.word("amounts.timing") or ("continuous" if ledger.timeline.kind == "t" else "spread")
+    timing = assumptions.word("amounts.timing") or ("continuous" if ledger.time_kind == "t" else "spread")
     basis = assumptions.word("amounts.basis") or "per person"
     own = basis if basis in ("per effective unit", "economy") else "per household"
     compounding = assumptions.word("market.compounding") or "continuous"
@@ -121,18 +122,20 @@ def _rates(assumptions: Assumptions, market: str, growth: str) -> tuple[dict[str
             try:
                 rates[key] = Rate.declared(figure, compounding)
             except ValueError as error:
-                faults.append(stop("assumption", f"{key}: {error}.", file=assumptions.file, column=key))
+                row = stated.row if (stated := assumptions.stated(key)) else None
+                faults.append(stop("assumption", f"{key}: {error}.", file=assumptions.file, row=row, column=key))
     return rates, faults
 
 
 def _contradictions(assumptions: Assumptions, timing: str) -> Iterator[Finding]:
     """Keys that only one kind of timing gives a meaning."""
-    if assumptions.stated("amounts.path") is not None and timing != "continuous":
+    path, quoted = assumptions.stated("amounts.path"), assumptions.stated("amounts.quoted")
+    if path is not None and timing != "continuous":
         message = f'a path between rows needs timing = "continuous"; with timing "{timing}" every row is a total.'
-        yield stop("assumption", message, file=assumptions.file, column="path")
-    if assumptions.stated("amounts.quoted") is not None and timing == "continuous":
+        yield stop("assumption", message, file=assumptions.file, row=path.row, column="path")
+    if quoted is not None and timing == "continuous":
         message = 'quoted needs a timing of totals, such as "spread"; with "continuous" every amount is a yearly rate at t.'
-        yield stop("assumption", message, file=assumptions.file, column="quoted")
+        yield stop("assumption", message, file=assumptions.file, row=quoted.row, column="quoted")
 
 
 def _entries(ledger: Ledger, assumptions: Assumptions, resolved: dict[str, str]) -> Iterator[Assumption]:
@@ -164,5 +167,5 @@ def _entries(ledger: Ledger, assumptions: Assumptions, resolved: dict[str, str])
         if entry is not None:
             yield entry
     for header, role in assumptions.columns:
-        if header.casefold() in {column.header.casefold() for column in ledger.columns}:
+        if folded(header) in {folded(column.header) for column in ledger.columns}:
             yield Assumption(key=f"columns.{header}", value=role, unit="", origin=Origin.FILE)

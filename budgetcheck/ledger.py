@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import difflib
 from dataclasses import dataclass
 from decimal import Decimal
 from fractions import Fraction
@@ -10,16 +9,13 @@ from fractions import Fraction
 import numpy as np
 
 from .assumptions import Assumptions
-from .findings import Finding, InputRefused, stop
-from .keys import LATER
+from .findings import Finding, stop
 from .numerals import MOST_MISREAD, Misread, explain, out_of_range, read_column
 from .quadrature import Floats
+from .roles import roles_of
 from .table import Column, Table
-from .text import quoted
-from .timeline import KINDS, LATER_KINDS, Timeline, from_figures
-
-KNOWN_ROLES = {"wage": "income", "income": "income", "consumption": "consumption", "r": "r", "t": "time", "year": "time"}
-LATER_HEADERS = frozenset({*LATER_KINDS, "g", "n", "members", "productivity", "wealth", "household"})
+from .text import folded
+from .timeline import Timeline, from_figures
 
 CLOSEST_ROWS = 1e-11
 """Rows nearer to each other than this share of the whole span are one date written twice."""
@@ -39,13 +35,16 @@ class LedgerColumn:
 
 @dataclass(frozen=True, eq=False)
 class Ledger:
-    """timeline and columns of one table; lines (n,) are line numbers in the file."""
+    """timeline and columns of one table; lines (n,) are line numbers in the file. With a stop among its findings the ledger
+    only serves to find more: cells without a figure are NaN, and timeline, or even time_kind ("t" or "year"), may be None."""
 
     file: str
     sha256: str
-    timeline: Timeline
+    time_kind: str | None
+    timeline: Timeline | None
     columns: tuple[LedgerColumn, ...]
     lines: tuple[int, ...]
+    findings: tuple[Finding, ...]
 
     def of_role(self, role: str) -> tuple[LedgerColumn, ...]:
         """The columns of that role, in the table's order."""
@@ -53,8 +52,9 @@ class Ledger:
 
 
 def keep(table: Table, assumptions: Assumptions) -> Ledger:
-    """Turn text cells into numbers. Raises InputRefused with every stop: roles, cells, order of time, number of rows."""
-    roles, findings = _roles(table, assumptions)
+    """Turn text cells into numbers; what is wrong with roles, cells, the order of time and the number of rows is among
+    its findings."""
+    roles, findings = roles_of(table, assumptions)
     used = [column for column in table.columns if roles.get(column.header, "ignore") != "ignore"]
     columns: list[LedgerColumn] = []
     for column in used:
@@ -64,94 +64,23 @@ def keep(table: Table, assumptions: Assumptions) -> Ledger:
     if len(table.lines) < 2:
         message = f"has {len(table.lines)} rows below its header; a plan needs at least two."
         findings.append(stop("structure", message, file=table.file))
-    time = [c for c in columns if c.role == "time"]
-    unreadable = {f.column for f in findings}
-    if len(time) == 1 and len(table.lines) >= 2 and time[0].header not in unreadable:
-        findings.extend(_time_findings(time[0], table))
-    if findings:
-        raise InputRefused(findings)
-    source = next(c for c in used if c.header == time[0].header)
-    timeline = from_figures(time[0].header.casefold(), source.cells, time[0].values)
-    kept = tuple(c for c in columns if c.role != "time")
-    return Ledger(file=table.file, sha256=table.sha256, timeline=timeline, columns=kept, lines=table.lines)
-
-
-def _roles(table: Table, assumptions: Assumptions) -> tuple[dict[str, str], list[Finding]]:
-    """The role of every header, and what is wrong with headers and roles."""
-    declared = {header.casefold(): role for header, role in assumptions.columns}
-    headers = [column.header for column in table.columns]
-    findings = [
-        stop(
-            "header-role",
-            "the assumptions give this column a role, but the table does not have it;",
-            file=assumptions.file,
-            column=header,
-            hint=_nearest(header, headers),
-        )
-        for header, _ in assumptions.columns
-        if header.casefold() not in {h.casefold() for h in headers}
-    ]
-    roles: dict[str, str] = {}
-    for header in headers:
-        key = header.casefold()
-        role = declared.get(key) or KNOWN_ROLES.get(key)
-        if role is None and f"columns.{header}" not in assumptions.attempted:
-            findings.append(_without_role(header, table))
-        elif role is None:
-            roles[header] = "ignore"
-        else:
-            roles[header] = role
-    findings.extend(_role_findings(roles, declared, table))
-    findings.extend(_rate_findings(roles, assumptions, table))
-    return roles, findings
-
-
-def _without_role(header: str, table: Table) -> Finding:
-    if header.casefold() in LATER_HEADERS:
-        hint = f'Say [columns] "{header}" = "ignore" to leave the column out of account.'
-        message = f"a column '{header.casefold()}' {LATER}."
-    else:
-        likely = difflib.get_close_matches(header.casefold(), KNOWN_ROLES, n=1, cutoff=0.6)
-        near = f" or rename it to {quoted(likely[0])}" if likely else ""
-        message = "has no role;"
-        hint = f"give it one under [columns] in the assumptions (income, consumption or ignore){near}."
-    return stop("header-role", message, file=table.file, row=1, column=header, raw=header, hint=hint)
-
-
-def _role_findings(roles: dict[str, str], declared: dict[str, str], table: Table) -> list[Finding]:
-    findings: list[Finding] = []
-    present = set(roles.values())
-    by_role = {role: [h for h, r in roles.items() if r == role] for role in present}
-    if len(by_role.get("time", [])) > 1:
-        message = f"has two time columns, {_joined(by_role['time'])}; keep one, or give the other the role ignore."
-        findings.append(stop("header-role", message, file=table.file, row=1))
-    if "time" not in present:
-        message = f"has no time column; name one {' or '.join(quoted(kind) for kind in KINDS)}."
-        findings.append(stop("header-role", message, file=table.file, row=1))
-    for role, name in (("income", "wage"), ("consumption", "consumption")):
-        if role not in present:
-            message = f"has no {role} column; name one {quoted(name)}, or give a column the role {role}"
-            hint = "(a column of zeros where there is none)." if role == "income" else "under [columns]."
-            findings.append(stop("header-role", message, file=table.file, row=1, hint=hint))
-    both = {"wage", "income"} & {h.casefold() for h in roles} - declared.keys()
-    if len(both) == 2:
-        message = "has both 'wage' and 'income', and one may be part of the other; declare the role of each under [columns]."
-        findings.append(stop("header-role", message, file=table.file, row=1))
-    return findings
-
-
-def _rate_findings(roles: dict[str, str], assumptions: Assumptions, table: Table) -> list[Finding]:
-    """The market interest rate has exactly one source."""
-    declared, columns = assumptions.stated("market.r"), [h for h, role in roles.items() if role == "r"]
-    if declared is None and not columns and "market.r" not in assumptions.attempted:
-        message = "the market interest rate r is missing; declare [market] r, use --r, or give the table a column 'r'."
-        if assumptions.stated("preferences.rho") is not None:
-            message += " The subjective discount rate rho does not stand in for it."
-        return [stop("rate-missing", message, file=assumptions.file or table.file)]
-    if declared is not None and columns:
-        message = "r has two sources, this column and [market] r (or --r); keep one, or give the column the role ignore."
-        return [stop("rate-missing", message, file=table.file, row=1, column=columns[0])]
-    return []
+    timeline = None
+    time = [column for column in columns if column.role == "time"]
+    if len(time) == 1 and len(table.lines) >= 2 and not np.isnan(time[0].values).any():
+        disorder = _time_findings(time[0], table)
+        findings.extend(disorder)
+        if not disorder:
+            source = next(column for column in used if column.header == time[0].header)
+            timeline = from_figures(folded(time[0].header), source.cells, time[0].values)
+    return Ledger(
+        file=table.file,
+        sha256=table.sha256,
+        time_kind=folded(time[0].header) if len(time) == 1 else None,
+        timeline=timeline,
+        columns=tuple(column for column in columns if column.role != "time"),
+        lines=table.lines,
+        findings=(*table.findings, *findings),
+    )
 
 
 def _numbers(column: Column, role: str, table: Table) -> tuple[LedgerColumn, list[Finding]]:
@@ -201,7 +130,7 @@ def _time_findings(time: LedgerColumn, table: Table) -> list[Finding]:
         where = {"file": table.file, "row": table.lines[index], "column": time.header, "raw": raw}
         findings.append(stop(rule, message, **where))
 
-    if time.header.casefold() == "year":
+    if folded(time.header) == "year":
         odd = (values != np.floor(values)) | (values < 1000) | (values > 9999)
         for i in np.flatnonzero(odd)[:MOST_MISREAD]:
             found(int(i), "time-cell", "is not a calendar year of four digits; use a column 't' for other times.")
@@ -213,12 +142,3 @@ def _time_findings(time: LedgerColumn, table: Table) -> list[Finding]:
         else:
             found(int(i), "time-order", f"is the same time as {before}; keep one row for each time.")
     return findings
-
-
-def _nearest(header: str, headers: list[str]) -> str:
-    near = difflib.get_close_matches(header, headers, n=1, cutoff=0.5)
-    return f"the nearest header is {quoted(near[0])}." if near else f"it has {_joined(headers)}."
-
-
-def _joined(words: list[str]) -> str:
-    return ", ".join(quoted(word) for word in words[:12])

@@ -22,6 +22,9 @@ LARGEST = 1e15
 LONGEST = 100
 """Characters in one figure."""
 
+MOST_EXPONENT = 15
+"""Power of ten of a last digit: 0e15 says no more than that the amount is below what can be handled anyway."""
+
 MOST_MISREAD = 1000
 """Cells of a column that are explained one by one; the rest is counted."""
 
@@ -42,8 +45,8 @@ class Misread:
 
 @dataclass(frozen=True, eq=False)
 class FigureColumn:
-    """values (n,) and half_units (n,), half a unit in the last printed digit; misread: index in the column and reason, of the
-    first MOST_MISREAD; misread_count: of all."""
+    """values (n,), NaN where there is no figure, and half_units (n,), half a unit in the last printed digit; misread: index in the
+    column and reason, of the first MOST_MISREAD; misread_count: of all."""
 
     values: Floats
     half_units: Floats
@@ -65,16 +68,17 @@ def out_of_range(figure: Decimal) -> Misread | None:
     """Why a decimal figure cannot be used: not finite, too large, or so small that floating point loses it."""
     if not figure.is_finite():
         return Misread("not-finite", "is not a finite number;", "write a figure.")
-    if abs(figure) > Decimal(LARGEST):
+    # by its exponent first: comparing would expand a huge one
+    if figure and (figure.adjusted() > 15 or abs(figure) > Decimal(LARGEST)):
         return Misread("not-finite", f"is larger than {LARGEST:.0e} can be handled;", "use `unit` to scale the amounts.")
-    if figure and abs(figure) < Decimal("1e-300"):
+    if figure and figure.adjusted() < -300:
         return Misread("not-finite", "is not zero, but too small to be told from it;", "write 0 if zero is meant.")
     return None
 
 
 def read_column(cells: Sequence[str]) -> FigureColumn:
     """Read every cell of a column; nothing is guessed and nothing left out: what is no figure is counted, and explained."""
-    values, halves = np.zeros(len(cells)), np.zeros(len(cells))
+    values, halves = np.full(len(cells), np.nan), np.zeros(len(cells))
     misread: list[tuple[int, Misread]] = []
     count = 0
     match = _FIGURE.fullmatch
@@ -88,15 +92,17 @@ def read_column(cells: Sequence[str]) -> FigureColumn:
             continue
         sign, mantissa, after, only, power = found.groups()
         value = float(f"{mantissa}e{power}" if power else mantissa)
-        if not value <= LARGEST or (value < 1e-300 and mantissa.strip("0.")):
+        last_digit = int(power or 0) - len(after or only or "")
+        problem = None
+        if not value <= LARGEST or value < 1e-300 or last_digit > MOST_EXPONENT:
             problem = out_of_range(Decimal(text.replace("\u2212", "-")))
-            if problem is not None:
-                count += 1
-                if count <= MOST_MISREAD:
-                    misread.append((index, problem))
+        if problem is not None:
+            count += 1
+            if count <= MOST_MISREAD:
+                misread.append((index, problem))
             continue
         values[index] = value if sign in ("", "+") else -value
-        halves[index] = int(power or 0) - len(after or only or "")
+        halves[index] = min(last_digit, MOST_EXPONENT)
     return FigureColumn(values=values, half_units=0.5 * 10.0**halves, misread=tuple(misread), misread_count=count)
 
 

@@ -95,9 +95,9 @@ class Geometric:
         # the square root of each factor, not of the product, which could overflow
         middle = np.sqrt(left) * np.sqrt(right)
         ratio = right / left
-        # log1p of the exact-ish difference keeps relative accuracy where neighbours are nearly equal
+        # log1p of the relative difference keeps its accuracy where neighbours are nearly equal
         near = np.abs(ratio - 1.0) < 0.5
-        slope = np.where(near, np.log1p((right - left) / left), np.log(ratio)) / 2.0
+        slope = np.where(near, np.log1p(np.where(near, (right - left) / left, 0.0)), np.log(ratio)) / 2.0
         q = np.stack([np.zeros_like(slope), slope], axis=-1)
         q_error = relative_error + 4.0 * UNIT * (1.0 + np.abs(slope))
         p_error = (relative_error + 4.0 * UNIT) * middle
@@ -188,9 +188,9 @@ class Smooth:
         return slopes, errors * SAFETY
 
     def _magnitudes(self, d_size: Floats, d_error: Floats) -> tuple[Floats, Floats, Floats]:
-        """Bounds on the error of the right sides: every term's size times ten roundings plus the error of d in it."""
+        """Bounds on the error of the right sides: every term's size times 14 roundings plus the error of d in it."""
         h = self.lengths
-        spread = d_error + 10.0 * UNIT * d_size
+        spread = d_error + 14.0 * UNIT * d_size
         inner = 3.0 * (h[1:] * spread[:, :-1] + h[:-1] * spread[:, 1:])
         left_end = ((3.0 * h[0] + 2.0 * h[1]) * h[1] * spread[:, 0] + h[0] ** 2 * spread[:, 1]) / (h[0] + h[1])
         right_end = ((3.0 * h[-1] + 2.0 * h[-2]) * h[-2] * spread[:, -1] + h[-1] ** 2 * spread[:, -2]) / (h[-1] + h[-2])
@@ -210,9 +210,9 @@ class Smooth:
         short = slack < residual
         if short.any():
             # ⟨A⟩x ≥ residual failed by rounding somewhere: scale a constant vector, which dominance makes sufficient
-            margin = main.copy()
-            margin[1:] -= lower
-            margin[:-1] -= upper
+            h = self.lengths
+            margin = h[:-1] + h[1:]
+            margin[0], margin[-1] = h[1], h[-2]
             worst = np.max(residual / margin, axis=1, keepdims=True)
             candidate = np.where(short.any(axis=1, keepdims=True), np.broadcast_to(worst, candidate.shape), candidate)
         return np.asarray(candidate)

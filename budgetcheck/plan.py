@@ -41,8 +41,8 @@ class Plan:
     streams : one for each column of amounts, in their order; interest : r; growth : the constant g + n, growth_exponent : its
     integral; decays : for each column, r − g − n beyond the last row less the growth of its tail; scale : A(0)·L(0)/H;
     wealth : household money at t = 0; terminal, terminal_growth : the requirement at the end T of a finite plan is
-    terminal·exp(terminal_growth·T) in household money; path : the name of the interpolation, or "totals"; per_cell : from a cell
-    to a yearly rate or a lump sum, (m,) or 1.
+    terminal·exp(terminal_growth·T) in household money; path : the name of the interpolation, or "totals"; per_cell : from a
+    cell to a yearly rate or a lump sum, (m,) or 1.
     """
 
     rows: Rows

@@ -118,7 +118,7 @@ def truncation_bound(size: Floats, q: Floats, swing: Floats, lengths: Floats) ->
     np.exp(np.minimum(grown, 709.0, out=grown), out=grown)
     with np.errstate(over="ignore"):
         bound = (size @ _ELLIPSE_POWERS[: size.shape[-1]]) * grown
-    return np.asarray(bound.min(axis=-1) * (lengths * (SAFETY / 2.0)))
+        return np.asarray(bound.min(axis=-1) * (lengths * (SAFETY / 2.0)))
 
 
 def integrate(p: Floats, q: Floats, lengths: Floats, *, p_error: Floats, q_error: Floats) -> Integral:

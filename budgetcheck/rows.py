@@ -53,6 +53,7 @@ def rows_of(ledger: Ledger, compounding: str) -> Rows:
         if column.role in ("income", "consumption")
     )
     printed = any(column.half_units is not None for column in ledger.columns)
+    assert ledger.timeline is not None, "a ledger without stops has a timeline"
     rates = ledger.of_role("r")
     values, error, slopes = _continuous(rates[0].values, compounding) if rates else (None, 0.0, None)
     return Rows(

@@ -26,6 +26,7 @@ class Mesh:
     breaks: Floats
     lengths: Floats
     interval: NDArray[np.intp]
+    halvings: int = 0
 
     @property
     def row_starts(self) -> NDArray[np.intp]:
@@ -40,7 +41,8 @@ class Mesh:
         breaks = np.empty(len(lengths) + 1)
         breaks[first], breaks[-1] = self.breaks[:-1], self.breaks[-1]
         breaks[first[mask] + 1] = self.breaks[:-1][mask] + self.lengths[mask] / 2.0
-        return Mesh(breaks=breaks, lengths=lengths, interval=np.repeat(self.interval, times))
+        interval = np.repeat(self.interval, times)
+        return Mesh(breaks=breaks, lengths=lengths, interval=interval, halvings=self.halvings + 1)
 
 
 def _split_pieces(coefficients: Floats, mask: Mask) -> tuple[Floats, Floats]:
@@ -138,8 +140,8 @@ class Exponent:
         at = rate.value * mesh.breaks
         slope = rate.value / 2.0 * mesh.lengths
         coefficients = np.stack([(at[:-1] + at[1:]) / 2.0, slope], axis=1)
-        # breakpoints are right to two roundings, the rate to its own error
-        at_error = (4.0 * UNIT * abs(rate.value) + rate.error) * mesh.breaks
+        # breakpoints are right to three roundings and one for each halving, the rate to its own error
+        at_error = ((4.0 + mesh.halvings) * UNIT * abs(rate.value) + rate.error) * mesh.breaks
         error = at_error[1:] + 2.0 * UNIT * np.abs(slope)
         return cls(coefficients=coefficients, error=error, at=at, at_error=at_error, beyond=rate)
 

@@ -11,6 +11,7 @@ import hashlib
 import io
 import sys
 from dataclasses import dataclass
+from decimal import Decimal
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
@@ -18,7 +19,7 @@ import numpy as np
 
 from .findings import Finding, InputRefused, stop
 from .quadrature import Floats
-from .text import visible
+from .text import folded, visible
 
 if TYPE_CHECKING:
     import pandas as pd
@@ -43,16 +44,18 @@ class Column:
 
 @dataclass(frozen=True, eq=False)
 class Table:
-    """file: the name to show; columns; lines (n,): the physical line of each row; sha256 of the input."""
+    """file: the name to show; columns; lines (n,): the physical line of each row; sha256 of the input; findings: faults of
+    structure, with which the rows that are sound can still be read for more."""
 
     file: str
     columns: tuple[Column, ...]
     lines: tuple[int, ...]
     sha256: str
+    findings: tuple[Finding, ...] = ()
 
 
 def read_csv(source: str | Path) -> Table:
-    """Read a CSV file, or standard input for '-'. Raises InputRefused with every structural fault found."""
+    """Read a CSV file, or standard input for '-'. Raises InputRefused where no table can be made out at all."""
     data, name = _bytes_of(source)
     text = _decoded(data, name)
     rows = _rows_of(text, name)
@@ -138,12 +141,11 @@ def _table_of(rows: list[tuple[int, list[str]]], name: str, sha256: str) -> Tabl
         findings.append(stop("structure", message, file=name, row=line, raw=shown, hint=hint))
     if len(ragged) > MOST_RAGGED:
         findings.append(stop("structure", f"{len(ragged) - MOST_RAGGED} more rows have another width.", file=name))
-    if findings:
-        raise InputRefused(findings)
-    records = [record for _, record in rows[1:]]
-    cells = list(zip(*records, strict=True)) if records else [()] * width
+    sound = [(line, record) for line, record in rows[1:] if len(record) == width]
+    cells = list(zip(*(record for _, record in sound), strict=True)) if sound else [()] * width
     columns = tuple(Column(header=head.strip(), cells=tuple(cell)) for head, cell in zip(header, cells, strict=True))
-    return Table(file=name, columns=columns, lines=tuple(line for line, _ in rows[1:]), sha256=sha256)
+    lines = tuple(line for line, _ in sound)
+    return Table(file=name, columns=columns, lines=lines, sha256=sha256, findings=tuple(findings))
 
 
 def _header_findings(header: list[str], line: int, name: str) -> list[Finding]:
@@ -155,7 +157,7 @@ def _header_findings(header: list[str], line: int, name: str) -> list[Finding]:
         return [stop("structure", "has no comma in it;", file=name, row=line, raw=header[0], hint=hint)]
     seen: dict[str, str] = {}
     for position, head in enumerate(header, start=1):
-        key = head.strip().casefold()
+        key = folded(head)
         if not key:
             message = f"column {position} has no name; name it, or remove the column."
             findings.append(stop("header-role", message, file=name, row=line))
@@ -181,18 +183,25 @@ def from_frame(frame: pd.DataFrame) -> Table:
     if not columns:
         raise InputRefused([stop("structure", "the DataFrame has no columns.")])
     findings = _header_findings([column.header for column in columns], 1, "DataFrame")
-    if findings:
-        raise InputRefused(findings)
     lines = tuple(range(2, len(frame) + 2))
-    return Table(file="DataFrame", columns=tuple(columns), lines=lines, sha256=digest.hexdigest())
+    return Table(file="DataFrame", columns=tuple(columns), lines=lines, sha256=digest.hexdigest(), findings=tuple(findings))
 
 
 def _frame_column(header: str, series: pd.Series[Any]) -> Column:
     if series.dtype.kind in "iuf" and not series.hasnans:
         return Column(header=header.strip(), cells=None, numbers=series.to_numpy(dtype=np.float64))
+    cells = series.tolist()
+    if all(isinstance(cell, (int, float, Decimal)) and not isinstance(cell, bool) for cell in cells) and not series.hasnans:
+        return Column(header=header.strip(), cells=None, numbers=np.array([_as_float(cell) for cell in cells]))
     # everything else is read as text by the grammar of figures, so that True, None and 1_000 are refused by name
-    return Column(header=header.strip(), cells=tuple("" if _missing(cell) else str(cell) for cell in series.tolist()))
+    missing = series.isna().tolist()
+    texts = ("" if gone else str(cell) for gone, cell in zip(missing, cells, strict=True))
+    return Column(header=header.strip(), cells=tuple(texts))
 
 
-def _missing(cell: object) -> bool:
-    return cell is None or (isinstance(cell, float) and cell != cell)
+def _as_float(cell: Any) -> float:
+    """A number of any kind; one too large for floating point becomes infinite, and is refused as such."""
+    try:
+        return float(cell)
+    except OverflowError:
+        return float("inf")

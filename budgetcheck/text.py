@@ -33,6 +33,13 @@ def visible(text: str, limit: int = 80) -> str:
     return _shortened("".join(shown), limit)
 
 
+def folded(header: str) -> str:
+    """A header as it is compared: without blanks around it and, in ASCII, without case. Other letters are compared as they are,
+    since case folding would make known names of look-alikes."""
+    header = header.strip()
+    return header.casefold() if header.isascii() else header
+
+
 def _escaped(character: str) -> str:
     code = ord(character)
     if code <= 0xFF:

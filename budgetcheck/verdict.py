@@ -138,7 +138,7 @@ def _net_of_equal_tails(account: Account, errors: Errors, threshold: float, scal
     beyond = "Both present values are infinite, but beyond the last row income equals consumption, so that the rows decide: "
     verdict = "PASS" if slack - error >= -threshold else "FAIL" if slack + error < -threshold else "UNDECIDED"
     reason = f"{beyond}{significant(abs(slack))} per unit of human capital is {'left' if slack >= 0 else 'missing'}."
-    decides = None if verdict != "UNDECIDED" else _what_decides(errors, threshold)
+    decides = None if verdict != "UNDECIDED" else _what_decides(errors)
     return Decision(
         verdict=verdict,
         reason=reason,
@@ -171,7 +171,7 @@ def _finite(account: Account, errors: Errors, tail: TailEstimate, threshold: flo
         reason = f"The plan seems to {side} {share} of lifetime resources, but {cause} leaves {unknown} open."
         if cause == "the tail":
             reason = f"{reason[:-1]}: {tail.why}."
-        decides = _what_decides(errors, threshold)
+        decides = _what_decides(errors)
     return Decision(
         verdict=verdict,
         reason=reason,
@@ -199,11 +199,14 @@ def _largest(errors: Errors) -> str:
     return max(parts, key=lambda part: parts[part])
 
 
-def _what_decides(errors: Errors, threshold: float) -> str:
+def _what_decides(errors: Errors) -> str:
     cause = _largest(errors)
     if cause == "the tail":
         return _DECLARE_TAIL
     if cause == "the path between rows":
         few = " (at least 4)" if math.isinf(errors.reconstruction) else ""
         return f'Finer rows{few}, or a declared path that the plan means, such as path = "linear" under [amounts].'
-    return f"A tolerance above {errors.numerical + threshold:.2g} in slack, or a shorter horizon."
+    return (
+        f"Present values known to better than {errors.numerical:.2g}: a declared constant r (compared exactly with g + n), "
+        f"r further from g + n beyond the last row, or a shorter horizon."
+    )

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from math import isfinite
 from typing import Protocol
 
 from flint import arb, ctx
@@ -34,7 +35,7 @@ def share_used(claimed: Claimed, truth: arb) -> float:
 
 def claims(found: Assessment, truth: Exact) -> list[tuple[str, Claimed, arb]]:
     """Every figure with a bound beside its exact value: slack and each present value, by both routes."""
-    result = []
+    result: list[tuple[str, Claimed, arb]] = []
     values = found.present_values
     with ctx.workprec(PRECISION):
         for route, account, scale in (("unit", values.unit, arb(1)), ("household", values.household, truth.scale)):
@@ -67,6 +68,8 @@ def violations(found: Assessment, truth: Exact) -> list[str]:
     found_wrong = misjudged(found, truth)
     for name, claim, value in claims(found, truth):
         used = share_used(claim, value)
+        if not isfinite(claim.bound):
+            found_wrong.append(f"{name} is given as finite, without a finite bound")
         if not used <= 1.0:
             found_wrong.append(f"{name} = {claim.value!r} ± {claim.bound!r} is off by {used:.3g} bounds")
     if not abs(found.routes_differ.value) <= found.routes_differ.bound:

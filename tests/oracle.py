@@ -16,6 +16,7 @@ from __future__ import annotations
 
 import csv
 import io
+import math
 from collections.abc import Mapping
 from dataclasses import dataclass
 from decimal import Decimal
@@ -37,7 +38,8 @@ class Exact:
     """Balls, money per unit of human capital at t = 0; None: the present value is infinite, or slack has no finite value.
 
     scale: A(0)·L(0)/H, which turns them into household money; lines: by column of amounts; decays: by role, the discount rate
-    less growth beyond the last row; size: the largest exponent of discounting met in the rows.
+    less growth beyond the last row; size: the largest exponent of discounting met in the rows,
+    with the logarithm of the largest amount times the longest interval.
     """
 
     slack: arb | None
@@ -146,7 +148,7 @@ def spline(lengths: list[fmpq]) -> fmpq_mat:
     return left.solve(right)
 
 
-def pieces(values: list[Any], lengths: list[fmpq], path: str, second: fmpq_mat | None) -> list[list[Any]]:
+def pieces(values: list[Any], lengths: list[Any], path: str, second: fmpq_mat | None) -> list[list[Any]]:
     """Coefficients in x ∈ [0, 1] on every interval between rows, of values that are rationals or balls."""
     if path == "step":
         return [[value] for value in values[: len(lengths)]]
@@ -286,7 +288,11 @@ def _exact(text: str, tree: Mapping[str, Mapping[str, Any]]) -> Exact:
         lines[head] = line
         by_role[role] = None if line is None or so_far is None else so_far + line
     wealth, terminal = _stocks(assumed, discount, times)
+    scale = assumed.productivity * assumed.members
     income, consumption = by_role["income"], by_role["consumption"]
+    exponent = max(sum(float(abs(c).upper()) for c in piece) for piece in q + discount)
+    peak = max(abs(cell) for head in lines for cell in table.cells[head])
+    largest = float(arb(peak * unit * factor * max(lengths) * max(scale, fmpq(1))).mid())
     slack = None if income is None or consumption is None else wealth + income - consumption - terminal
     return Exact(
         slack=slack,
@@ -294,10 +300,10 @@ def _exact(text: str, tree: Mapping[str, Mapping[str, Any]]) -> Exact:
         consumption=consumption,
         wealth=wealth,
         terminal=terminal,
-        scale=arb(assumed.productivity * assumed.members),
+        scale=arb(scale),
         lines=lines,
         decays=decays,
-        size=max(sum(float(abs(c).upper()) for c in piece) for piece in q + discount),
+        size=exponent + max(0.0, math.log(largest) if largest > 0.0 else 0.0),
     )
 
 

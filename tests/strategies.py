@@ -9,6 +9,8 @@ from random import Random
 from typing import Any
 
 LARGEST_EXPONENT = 690.0
+"""Supported range of the discount exponent and the logarithm of the amounts together."""
+
 PRECISE = 16
 """Significant digits of figures where rounding before printing would itself make a wild path."""
 
@@ -120,7 +122,7 @@ class _Draw:
             return Decimal(0)
         if kind < 0.16:
             return Decimal(f"{rng.choice((-1, 1)) * min(10.0 ** rng.uniform(-16, -13), largest):.3e}")
-        size = largest * rng.uniform(0.2, 1.0) * (1 if rng.random() < 0.7 else -0.9)
+        size = largest * rng.uniform(0.4, 1.0) * (1 if rng.random() < 0.7 else -0.9)
         return Decimal(f"{max(size, -0.5):.{rng.choice((1, 2, 4, 14))}e}")
 
     def _growth(self) -> None:

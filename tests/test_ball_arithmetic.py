@@ -76,6 +76,17 @@ HARD = {
         amounts=continuous("smooth"),
         horizon=PERPETUAL,
     ),
+    "a column of r above g + n by little more than its rounding": plan(
+        "t,wage,consumption,r 0,3,2,0.05000000000000003 1,3,2.5,0.05000000000000003",
+        growth={"g": Decimal("0.02"), "n": Decimal("0.03")},
+        amounts=continuous("linear"),
+        horizon=PERPETUAL,
+    ),
+    "the same in annual totals": plan(
+        "year,wage,consumption,r 2030,3,2,0.05000000000000008 2031,3,2.5,0.05000000000000008",
+        growth={"g": Decimal("0.02"), "n": Decimal("0.03")},
+        horizon=PERPETUAL,
+    ),
     "r exactly zero": plan(LEVEL, market={"r": 0}, amounts=continuous("smooth"), horizon={"kind": "finite"}),
     "r = 1e-13": plan(LEVEL, market={"r": Decimal("1e-13")}, amounts={"timing": "spread"}, horizon=PERPETUAL),
     "r = -1e-300": plan(LEVEL, market={"r": Decimal("-1e-300")}, amounts={"timing": "in arrears"}),

@@ -25,6 +25,13 @@ sys.path.insert(0, str(Path(__file__).parents[1]))
 from oracle import exact
 
 import budgetcheck
+from budgetcheck import assumptions as declared
+from budgetcheck.budget import Budget, budget
+from budgetcheck.conventions import settle
+from budgetcheck.ledger import keep
+from budgetcheck.plan import build
+from budgetcheck.rows import rows_of
+from budgetcheck.table import from_frame
 
 LIMIT_SMALL = 5e-3
 LIMIT_LARGE = 1.0
@@ -70,6 +77,15 @@ def in_process(repetitions: int) -> None:
             print(f"assess(), {rows:6d} rows, {name:18}  {1e3 * taken:8.2f} ms (limit {1e3 * limit:g} ms)")
 
 
+def account_only(table: pd.DataFrame, assumptions: dict[str, Any]) -> Callable[[], Budget]:
+    """Streams, both routes to slack and their bounds, without what else an assessment computes."""
+    stated = declared.read(assumptions)
+    ledger = keep(from_frame(table), stated)
+    conventions = settle(ledger, stated)
+    rows = rows_of(ledger, conventions.compounding)
+    return lambda: budget(build(rows, conventions, conventions.path))
+
+
 def by_quad(table: pd.DataFrame, growth: float) -> float:
     """Present value of income less that of consumption over the rows, interval by interval by adaptive quadrature."""
     t = table["t"].to_numpy()
@@ -99,7 +115,13 @@ def against_quad(repetitions: int) -> None:
     slack = budgetcheck.assess(table, assumptions).slack.per_effective_unit
     assert slack is not None
     print(f"whole assessment, {ROWS_AGAINST_QUAD} rows  {1e3 * ours:.2f} ms, slack {slack.value:.6g}, bound {slack.bound:.1e}")
-    print(f"scipy.integrate.quad        {1e3 * theirs:.1f} ms, ratio {theirs / ours:.0f} (limit at least {LIMIT_RATIO:g})")
+    account = typical(account_only(table, assumptions), repetitions)
+    print(f"account by both routes      {1e3 * account:.2f} ms")
+    print(f"scipy.integrate.quad        {1e3 * theirs:.1f} ms")
+    print(
+        f"ratio to quad               {theirs / ours:.0f} of the whole assessment, {theirs / account:.0f} of the account alone"
+    )
+    print(f"                            (limit at least {LIMIT_RATIO:g})")
     error, other = abs(float(truth - slack.value)), abs(float(truth - by_quad(table, 0.02)))
     print(f"true error                  {error:.1e}, of quad {other:.1e} (ours must be no larger)")
 
