@@ -5,12 +5,13 @@ from typing import TYPE_CHECKING, Any
 from .version import VERSION as __version__
 
 if TYPE_CHECKING:
-    from .assessment import Assessment, assess
+    from .assessment import Assessment
     from .findings import BudgetcheckError, Finding, InputRefused, NotAffordable
+    from .pipeline import assess
 
 __all__ = ["Assessment", "BudgetcheckError", "Finding", "InputRefused", "NotAffordable", "__version__", "assess"]
 
-_HOMES = {"Assessment": "assessment", "assess": "assessment"}
+_HOMES = {"Assessment": "assessment", "assess": "pipeline"}
 
 
 def __getattr__(name: str) -> Any:

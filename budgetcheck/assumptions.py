@@ -10,6 +10,7 @@ from dataclasses import dataclass
 from decimal import Decimal
 from enum import StrEnum
 from fractions import Fraction
+from functools import cached_property
 from numbers import Rational, Real
 from pathlib import Path
 from typing import Any
@@ -59,7 +60,11 @@ class Assumptions:
 
     def stated(self, key: str) -> Assumption | None:
         """What was declared under the key, or None."""
-        return next((entry for entry in self.declared if entry.key == key), None)
+        return self._by_key.get(key)
+
+    @cached_property
+    def _by_key(self) -> dict[str, Assumption]:
+        return {entry.key: entry for entry in self.declared}
 
     def entry(self, key: str) -> Assumption | None:
         """What was declared under the key, or its default with that origin, or None where neither exists."""
@@ -274,7 +279,7 @@ class _Reading:
         return result
 
 
-_SMALLEST = Fraction(1, 10**300)
+_SMALLEST = Fraction(1, 10**100)
 _NO_NUMBER = Misread("assumption", "is not a number;", "write a plain number, without quotes.")
 
 
@@ -303,7 +308,7 @@ def _exact(value: object) -> Fraction | Misread:
         figure = Fraction(int(value.numerator), int(value.denominator))
         beyond = abs(figure) > Fraction(10**15) or (figure != 0 and abs(figure) < _SMALLEST)
         # the same words as for a printed figure beyond the range on that side
-        example = Decimal("1e16") if abs(figure) > 1 else Decimal("1e-301")
+        example = Decimal("1e16") if abs(figure) > 1 else Decimal("1e-101")
         return (out_of_range(example) or _NO_NUMBER) if beyond else figure
     if isinstance(value, Real):
         # the decimal figure that Python prints is what was meant: 0.05 is five hundredths

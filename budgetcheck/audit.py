@@ -11,7 +11,7 @@ from collections.abc import Callable, Iterator
 import numpy as np
 
 from .assumptions import Assumptions
-from .findings import Finding, note, stop, warn
+from .findings import Finding, note, rest, stop, warn
 from .ledger import Ledger, LedgerColumn
 from .rates import CONVERSIONS
 from .text import quoted
@@ -32,7 +32,8 @@ def audit(ledger: Ledger, assumptions: Assumptions) -> tuple[Finding, ...]:
 
 
 def _cells(ledger: Ledger, column: LedgerColumn, wrong: np.ndarray, rule: str, message: str, hint: str) -> Iterator[Finding]:
-    for index in np.flatnonzero(wrong)[:MOST_PER_RULE]:
+    found = np.flatnonzero(wrong)
+    for index in found[:MOST_PER_RULE]:
         yield stop(
             rule,
             message,
@@ -42,6 +43,7 @@ def _cells(ledger: Ledger, column: LedgerColumn, wrong: np.ndarray, rule: str, m
             raw=f"{column.values[index]:.17g}",
             hint=hint,
         )
+    yield from rest(rule, len(found), MOST_PER_RULE, "cells of this column likewise", file=ledger.file, column=column.header)
 
 
 def _sign(ledger: Ledger, _: Assumptions) -> Iterator[Finding]:

@@ -22,6 +22,13 @@ class Bounded:
     def __sub__(self, other: Bounded) -> Bounded:
         return self + Bounded(-other.value, other.bound)
 
+    def reciprocal(self) -> Bounded:
+        """1/x for x known to better than a tenth of itself."""
+        value = 1.0 / self.value
+        relative = self.bound / abs(self.value)
+        rounding = 0.0 if abs(self.value) == 1.0 else UNIT
+        return Bounded(value, abs(value) * (1.2 * relative + rounding) * SAFETY)
+
     def times(self, factor: float, factor_error: float = 0.0) -> Bounded:
         """The product with a factor known to a relative error."""
         value = self.value * factor
@@ -30,6 +37,7 @@ class Bounded:
 
 
 ZERO = Bounded(0.0)
+ONE = Bounded(1.0)
 
 
 def total(values: Floats, bounds: Floats) -> Bounded:

@@ -22,7 +22,7 @@ from .bounded import ZERO, Bounded, total
 from .plan import LARGEST_EXPONENT, OutOfRange, Plan
 from .quadrature import EXP_ERROR, MOST_HALVINGS, SAFETY, UNIT, Floats, Integral
 from .rates import Rate
-from .streams import Exponent, Mesh, RatePath, Streams
+from .streams import Exponent, Mesh, Streams
 
 NEAR_TIE = 10.0
 """A decay of fewer than this many times its own rounding is not told from a tie: its reciprocal would mean nothing."""
@@ -52,17 +52,27 @@ class PresentValue:
         """Rows and tail together; meaningful where the reach is finite."""
         return self.rows + self.tail
 
+    @property
+    def value(self) -> float | None:
+        """The whole, or None where it is not finite."""
+        return self.whole.value if self.reach is Reach.FINITE else None
+
+    @property
+    def bound(self) -> float | None:
+        """Proved: |value − exact| ≤ bound; None where there is no value."""
+        return self.whole.bound if self.reach is Reach.FINITE else None
+
 
 @dataclass(frozen=True, kw_only=True)
 class Account:
     """The lifetime account in one unit: initial wealth, present values by column and by role, the discounted terminal
-    requirement, and slack, with all tails that are finite or, rows_slack, without tails."""
+    requirement (terminal_wealth), and slack, with all tails that are finite or, rows_slack, without tails."""
 
-    wealth: Bounded
+    initial_wealth: Bounded
     lines: tuple[PresentValue, ...]
     income: PresentValue
     consumption: PresentValue
-    terminal: Bounded
+    terminal_wealth: Bounded
     slack: Bounded
     rows_slack: Bounded
 
@@ -117,17 +127,18 @@ def per_household(plan: Plan) -> Route:
 def per_unit(plan: Plan) -> Route:
     """Equation (2): streams restated per unit of human capital, then discounted with e^{−Λ}."""
     growth, net = plan.growth_exponent, discount(plan, plan.growth)
-    factor, error = 1.0 / plan.scale.value, 3.0 * UNIT
-    streams = plan.streams.restated(growth, sign=-1, factor=factor, factor_error=error).restated(net, sign=-1)
-    required = _required(plan, net, (growth,)).times(factor, error)
-    return _route(plan, streams, net, plan.wealth.times(factor, error), required)
+    factor = plan.scale.reciprocal()
+    relative = factor.bound / factor.value
+    streams = plan.streams.restated(growth, sign=-1, factor=factor).restated(net, sign=-1)
+    required = _required(plan, net, (growth,)).times(factor.value, relative)
+    return _route(plan, streams, net, plan.wealth.times(factor.value, relative), required)
 
 
 def discount(plan: Plan, less: Rate) -> Exponent | None:
     """∫(r − less): the exponent that discounts; for declared rates the difference is exact, and None where it is zero."""
     if plan.rows.rates is None:
         return Exponent.constant(plan.interest.beyond - less, plan.mesh)
-    path = plan.interest - RatePath.constant(less, len(plan.mesh.lengths)) if less.sign != 0 else plan.interest
+    path = plan.interest.less(less) if less.sign != 0 else plan.interest
     return Exponent.of(path, plan.mesh.lengths)
 
 
@@ -174,11 +185,11 @@ def _account(plan: Plan, streams: Streams, integral: Integral, wealth: Bounded, 
     income, consumption = _sum("income", lines), _sum("consumption", lines)
     rows_slack = wealth + income.rows - consumption.rows - terminal
     return Account(
-        wealth=wealth,
+        initial_wealth=wealth,
         lines=tuple(lines),
         income=income,
         consumption=consumption,
-        terminal=terminal,
+        terminal_wealth=terminal,
         slack=rows_slack + income.tail - consumption.tail,
         rows_slack=rows_slack,
     )

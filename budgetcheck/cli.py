@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import io
 import os
 import shutil
 import sys
@@ -91,7 +92,7 @@ def _figure(text: str | None) -> str | None:
 
         read = exact(text)
         if isinstance(read, Misread):
-            raise typer.BadParameter(f"{text!a} {read.message} {read.hint}")
+            raise typer.BadParameter(f"{text!a} is no figure; write digits with a decimal point, such as 0.04.")
     return text
 
 
@@ -121,7 +122,7 @@ def assess(
     given = {"r": r, "g": g, "n": n, "wealth": wealth, "tolerance": tolerance}
     options = {name: text for name, text in given.items() if text is not None}
     _check_target(save, plan, assumptions)
-    from . import assessment as pipeline
+    from . import pipeline
     from .findings import InputRefused
 
     try:
@@ -137,18 +138,34 @@ def _check_target(save: Path | None, plan: str, assumptions: Path | None) -> Non
     """A report is never written over an input, nor where it cannot be."""
     if save is None:
         return
-    inputs = [Path(plan), Path(plan).with_suffix(".toml")] if plan != "-" else []
-    inputs += [] if assumptions is None else [assumptions]
-    if any(save.absolute().resolve() == path.absolute().resolve() for path in inputs):
+    try:
+        target = save.absolute().resolve()
+        usable = not target.is_dir() and target.parent.is_dir()
+    except (OSError, ValueError):
+        usable = False
+    if not usable:
+        message = f"{visible(str(save))!r} is a folder, lies in one that does not exist, or is no file name."
+        raise typer.BadParameter(message, param_hint="--save")
+    inputs = [plan, str(Path(plan).parent / f"{Path(plan).stem}.toml")] if plan != "-" else []
+    inputs += [] if assumptions is None else [str(assumptions)]
+    if any(_same(target, path) for path in inputs):
         raise typer.BadParameter("the report would replace an input; name another file.", param_hint="--save")
-    if save.is_dir() or not save.absolute().parent.is_dir():
-        raise typer.BadParameter("is a folder, or lies in one that does not exist.", param_hint="--save")
+
+
+def _same(target: Path, path: str) -> bool:
+    try:
+        return target == Path(path).absolute().resolve()
+    except (OSError, ValueError):
+        return False
 
 
 def _publish(result: Assessment | InputRefused, report: Report, *, full: bool, save: Path | None) -> None:
     """The report to standard output and, if asked for, to a file. A refusal on a terminal goes to standard error."""
     refused = not hasattr(result, "verdict")
     stream = sys.stderr if refused and report is Report.TERMINAL else sys.stdout
+    if stream is None:
+        # the stream is closed: nobody reads, and the exit code still tells the verdict
+        stream = io.StringIO()
     color = stream.isatty() and not os.environ.get("NO_COLOR") and os.environ.get("TERM") != "dumb"
     width = shutil.get_terminal_size((80, 24)).columns if stream.isatty() else 80
     _write(stream, _rendered(result, report, width=width, color=color, full=full))
@@ -171,16 +188,28 @@ def _rendered(result: Assessment | InputRefused, report: Report, *, width: int, 
 
 
 def _write(stream: IO[str], text: str) -> None:
-    """Write, with a replacement for characters that the terminal's encoding does not have."""
+    """Write, with words in ASCII for signs that the stream's encoding does not have."""
+    encoding = getattr(stream, "encoding", None) or "utf-8"
+    for sign, plain in (("−", "-"), ("±", "+/-"), ("×", "x"), ("…", "..."), ("–", "-")):
+        if not _encodes(sign, encoding):
+            text = text.replace(sign, plain)
     reconfigure = getattr(stream, "reconfigure", None)
     if reconfigure is not None:
-        reconfigure(errors="replace")
+        reconfigure(errors="backslashreplace")
     try:
         typer.echo(text, file=stream, nl=False)
         stream.flush()
     except BrokenPipeError:
         # the reader has gone; the verdict's exit code is still right, and nothing more may be flushed into the pipe
         os.dup2(os.open(os.devnull, os.O_WRONLY), stream.fileno())
+
+
+def _encodes(sign: str, encoding: str) -> bool:
+    try:
+        sign.encode(encoding)
+    except UnicodeEncodeError:
+        return False
+    return True
 
 
 def _replace(target: Path, text: str) -> None:
@@ -190,12 +219,17 @@ def _replace(target: Path, text: str) -> None:
         try:
             with os.fdopen(handle, "w", encoding="utf-8") as file:
                 file.write(text)
+            # a temporary file is private; a report has the permissions of any new file
+            umask = os.umask(0)
+            os.umask(umask)
+            Path(name).chmod(0o666 & ~umask)
             os.replace(name, target)
         except BaseException:
             Path(name).unlink(missing_ok=True)
             raise
     except OSError as error:
-        raise typer.BadParameter(f"cannot be written: {error.strerror}.", param_hint="--save") from error
+        message = f"{visible(str(target))!r} cannot be written: {error.strerror}."
+        raise typer.BadParameter(message, param_hint="--save") from error
 
 
 def main() -> None:

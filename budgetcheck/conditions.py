@@ -1,6 +1,7 @@
 """The conditions a lifetime plan must meet, each with its figures and a sentence.
 
 With D(t) = e^{−Λ(t)}k(t), whose limit is slack plus the discounted terminal requirement:
+solvency at every date, k(t) no less than minus what wages still to come can repay, which with c ≥ 0 follows from S ≥ 0;
 no-Ponzi, lim D ≥ 0 beyond what is required; transversality, nothing of value left unused, lim D equal to it;
 convergence, every present value finite (r > g + n + the stream's own growth per unit, beyond the last row).
 Acemoglu (2009), eqs 8.9–8.17 (per head); common practice.
@@ -8,23 +9,31 @@ Acemoglu (2009), eqs 8.9–8.17 (per head); common practice.
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass
 
 from .budget import Account, Reach
 from .figures import significant
 from .plan import Plan
 from .verdict import Decision
+from .wealth import WealthPath
 
 
 @dataclass(frozen=True, kw_only=True)
 class Condition:
-    """holds: True, False, or None where the error forbids a statement; limit and rate: figures, see `sentence`."""
+    """holds: True, False, or None where the error forbids a statement; sentence: the same in words, with the figures.
+
+    limit: of discounted wealth, per unit of human capital, infinite where it has none; rate_of_approach: at which it is
+    approached, net_rate: r − g − n beyond the last row, both 1/year; since: the first date, in years since the start, at
+    which solvency fails. None where a figure does not apply.
+    """
 
     holds: bool | None
     sentence: str
     limit: float | None = None
     rate_of_approach: float | None = None
     net_rate: float | None = None
+    since: float | None = None
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -34,14 +43,16 @@ class Conditions:
     convergence: Condition | None
     no_ponzi: Condition
     transversality: Condition
+    solvency: Condition
 
 
-def conditions(plan: Plan, account: Account, decision: Decision) -> Conditions:
-    """The conditions of a plan, from its account per unit of human capital and the decision on it."""
+def conditions(plan: Plan, account: Account, decision: Decision, path: WealthPath) -> Conditions:
+    """The conditions of a plan, from its account per unit of human capital, the decision on it and its path of wealth."""
     return Conditions(
         convergence=_convergence(plan, account) if plan.conventions.perpetual else None,
         no_ponzi=_no_ponzi(plan, account, decision),
         transversality=_transversality(plan, account, decision),
+        solvency=_solvency(plan, decision, path),
     )
 
 
@@ -65,10 +76,12 @@ def _convergence(plan: Plan, account: Account) -> Condition:
 
 def _no_ponzi(plan: Plan, account: Account, decision: Decision) -> Condition:
     holds = {"PASS": True, "FAIL": False}.get(decision.verdict)
-    limit = account.slack.value + account.terminal.value if decision.finite else None
+    limit = account.slack.value + account.terminal_wealth.value if decision.finite else math.inf
     where = "in the limit" if plan.conventions.perpetual else "at the end of the plan"
-    required = "" if plan.terminal.value == 0.0 else f", of which {significant(account.terminal.value)} is required"
-    value = "" if limit is None else f" (discounted wealth {where}: {significant(limit)} per unit of human capital{required})"
+    required = "" if plan.terminal.value == 0.0 else f", of which {significant(account.terminal_wealth.value)} is required"
+    value = (
+        "" if math.isinf(limit) else f" (discounted wealth {where}: {significant(limit)} per unit of human capital{required})"
+    )
     sentence = {
         True: f"No debt is left unpaid {where}{value}.",
         False: f"The plan leaves a debt that is never repaid {where}{value}."
@@ -81,7 +94,8 @@ def _no_ponzi(plan: Plan, account: Account, decision: Decision) -> Condition:
 
 def _transversality(plan: Plan, account: Account, decision: Decision) -> Condition:
     if not decision.finite:
-        return Condition(holds=None, sentence="With present values that are not finite, no limit of wealth can be stated.")
+        sentence = "With present values that are not finite, no limit of wealth can be stated."
+        return Condition(holds=None, limit=math.inf, sentence=sentence)
     slack, threshold = abs(account.slack.value), decision.threshold
     holds: bool | None = None
     if slack + decision.error <= threshold:
@@ -99,5 +113,20 @@ def _transversality(plan: Plan, account: Account, decision: Decision) -> Conditi
         f"{significant(account.slack.value)} per unit of human capital{speed}.",
         None: f"Whether anything is left unused cannot be told yet (limit {significant(account.slack.value, 3)}{speed}).",
     }[holds]
-    limit = account.slack.value + account.terminal.value
+    limit = account.slack.value + account.terminal_wealth.value
     return Condition(holds=holds, limit=limit, rate_of_approach=rate, sentence=sentence)
+
+
+def _solvency(plan: Plan, decision: Decision, path: WealthPath) -> Condition:
+    """With consumption never negative it follows from the verdict's inequality; where that fails, the path dates it."""
+    holds = {"PASS": True, "FAIL": False}.get(decision.verdict)
+    if holds:
+        return Condition(holds=True, sentence="At every date what is owed can be repaid out of income still to come.")
+    if holds is None:
+        return Condition(holds=None, sentence="Whether debts can always be repaid out of income still to come cannot be told.")
+    if path.first_insolvent is None:
+        when = "only after the last row" if plan.conventions.perpetual and decision.finite else "sooner or later"
+        return Condition(holds=False, sentence=f"{when.capitalize()} more is owed than income still to come can repay.")
+    date = plan.rows.timeline.date(path.first_insolvent)
+    sentence = f"From {date} on more is owed than income still to come can repay."
+    return Condition(holds=False, since=path.first_insolvent, sentence=sentence)

@@ -5,12 +5,13 @@ from __future__ import annotations
 from collections.abc import Iterator
 from dataclasses import dataclass
 from fractions import Fraction
+from functools import cached_property
 
 from .assumptions import Assumption, Assumptions, Origin
 from .findings import Finding, InputRefused, stop
 from .keys import BY_PATH
 from .ledger import Ledger
-from .rates import Rate
+from .rates import ZERO, Rate
 from .text import folded
 
 
@@ -47,14 +48,15 @@ class Conventions:
     tolerance: float
     entries: tuple[Assumption, ...]
 
+    @cached_property
+    def growth(self) -> Rate:
+        """g + n: growth of human capital per household."""
+        return self.g + self.n
+
     @property
     def periods(self) -> bool:
         """Whether each row speaks of a period (spread and lump timings) rather than of a date."""
         return self.timing != "continuous"
-
-    def figure(self, key: str) -> float:
-        """A declared or defaulted figure as a floating-point number."""
-        return float(next(entry.value for entry in self.entries if entry.key == key))
 
 
 def settle(ledger: Ledger, assumptions: Assumptions) -> Conventions:
@@ -120,7 +122,7 @@ def _rates(assumptions: Assumptions, market: str, growth: str) -> tuple[dict[str
         figure = assumptions.figure(key)
         if figure is not None:
             try:
-                rates[key] = Rate.declared(figure, compounding)
+                rates[key] = Rate.declared(figure, compounding) if figure else ZERO
             except ValueError as error:
                 row = stated.row if (stated := assumptions.stated(key)) else None
                 faults.append(stop("assumption", f"{key}: {error}.", file=assumptions.file, row=row, column=key))

@@ -9,6 +9,8 @@ def amount(value: float, scale: float) -> str:
     """An amount of money to about seven significant digits of `scale`, so that a column of amounts adds up by eye."""
     if value == 0.0:
         return "0"
+    if not math.isfinite(value):
+        return "not finite"
     if not 1e-9 < abs(scale) < 1e13:
         return significant(value)
     decimals = min(max(6 - math.floor(math.log10(abs(scale))), 0), 12)
@@ -17,6 +19,8 @@ def amount(value: float, scale: float) -> str:
 
 def significant(value: float, digits: int = 6) -> str:
     """A figure to so many significant digits."""
+    if not math.isfinite(value):
+        return "not finite"
     if value != 0.0 and 1.0 <= abs(value) < 1e13:
         decimals = max(digits - 1 - math.floor(math.log10(abs(value))), 0)
         return f"{value:,.{decimals}f}".replace("-", "−")
@@ -25,9 +29,9 @@ def significant(value: float, digits: int = 6) -> str:
 
 def error(value: float) -> str:
     """An error: two digits, or that nothing bounds it."""
-    return "± unknown" if math.isinf(value) else f"± {value:.2g}"
+    return "± unknown" if not math.isfinite(value) else f"± {value:.2g}"
 
 
 def percent(share: float | None) -> str:
     """A share as a percentage."""
-    return "not defined" if share is None else f"{100.0 * share:.4g} %".replace("-", "−")
+    return "not defined" if share is None or not math.isfinite(share) else f"{100.0 * share:.4g} %".replace("-", "−")

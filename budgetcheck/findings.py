@@ -19,7 +19,8 @@ class Severity(StrEnum):
 
 @dataclass(frozen=True, kw_only=True)
 class Finding:
-    """One thing found. row is the line number in the file, the header being 1; raw the text as it stands there."""
+    """One thing found. row is the line number in the file, the header being 1; raw the text as it stands there; places: how
+    many places it speaks of, more than one where the rest of a long list is summed up."""
 
     rule: str
     severity: Severity
@@ -29,6 +30,7 @@ class Finding:
     column: str | None = None
     raw: str | None = None
     hint: str | None = None
+    places: int = 1
 
     @property
     def place(self) -> str:
@@ -62,6 +64,13 @@ def warn(rule: str, message: str, **where: object) -> Finding:
 def note(rule: str, message: str, **where: object) -> Finding:
     """A finding worth knowing."""
     return Finding(rule=rule, severity=Severity.NOTE, message=message, **where)  # type: ignore[arg-type]
+
+
+def rest(rule: str, count: int, named: int, what: str, **where: object) -> tuple[Finding, ...]:
+    """What sums up the places of a stop beyond the first `named`; nothing where all were named."""
+    if count <= named:
+        return ()
+    return (stop(rule, f"{count - named} more {what}, {count} in all.", places=count - named, **where),)
 
 
 def worst_first(findings: Iterable[Finding]) -> tuple[Finding, ...]:

@@ -48,9 +48,13 @@ def _rate(section: str, name: str, default: Fraction | None) -> Key:
     return Key(section=section, name=name, low=Fraction(-1), high=Fraction(100), above=True, default=default, unit="1/year")
 
 
-def _amount(section: str, name: str, default: Fraction | None, *, positive: bool = False, unit: str = "money") -> Key:
-    low = _ZERO if positive else -_LARGEST
-    return Key(section=section, name=name, low=low, high=_LARGEST, above=positive, default=default, unit=unit)
+def _amount(section: str, name: str, default: Fraction | None, *, unit: str = "money") -> Key:
+    return Key(section=section, name=name, low=-_LARGEST, high=_LARGEST, default=default, unit=unit)
+
+
+def _factor(section: str, name: str, unit: str) -> Key:
+    # a factor of amounts: its range keeps products of four of them far inside floating point
+    return Key(section=section, name=name, low=1 / _LARGEST, high=_LARGEST, default=_ONE, unit=unit)
 
 
 def _word(section: str, name: str, choices: tuple[str, ...], default: str | None, later: tuple[str, ...] = ()) -> Key:
@@ -67,14 +71,14 @@ KEYS = (
     _word("growth", "compounding", COMPOUNDINGS, None),
     _amount("household", "wealth", _ZERO),
     _word("household", "wealth_basis", BASES, None),
-    _amount("household", "members", _ONE, positive=True, unit="persons per household"),
-    _amount("household", "productivity", _ONE, positive=True, unit="index"),
-    _amount("household", "households", _ONE, positive=True, unit="households"),
+    _factor("household", "members", "persons per household"),
+    _factor("household", "productivity", "index"),
+    _factor("household", "households", "households"),
     _word("amounts", "basis", BASES, "per person"),
     _word("amounts", "timing", TIMINGS, None),
     _word("amounts", "quoted", ("per period", "per year"), "per period"),
     _word("amounts", "path", PATHS, None),
-    _amount("amounts", "unit", _ONE, positive=True, unit="money per 1 in the table"),
+    _factor("amounts", "unit", "money per 1 in the table"),
     _word("amounts", "prices", ("real",), "real", later=("nominal",)),
     _word("horizon", "kind", ("finite", "perpetual"), "finite"),
     _amount("horizon", "terminal_wealth", _ZERO),

@@ -9,8 +9,8 @@ from fractions import Fraction
 import numpy as np
 
 from .assumptions import Assumptions
-from .findings import Finding, stop
-from .numerals import MOST_MISREAD, Misread, explain, out_of_range, read_column
+from .findings import Finding, rest, stop
+from .numerals import LARGEST, MOST_MISREAD, SMALLEST, Misread, explain, out_of_range, read_column
 from .quadrature import Floats
 from .roles import roles_of
 from .table import Column, Table
@@ -61,8 +61,8 @@ def keep(table: Table, assumptions: Assumptions) -> Ledger:
         read, problems = _numbers(column, roles[column.header], table)
         columns.append(read)
         findings.extend(problems)
-    if len(table.lines) < 2:
-        message = f"has {len(table.lines)} rows below its header; a plan needs at least two."
+    if len(table.lines) + table.ragged < 2:
+        message = f"has {len(table.lines) + table.ragged} rows below its header; a plan needs at least two."
         findings.append(stop("structure", message, file=table.file))
     timeline = None
     time = [column for column in columns if column.role == "time"]
@@ -88,20 +88,23 @@ def _numbers(column: Column, role: str, table: Table) -> tuple[LedgerColumn, lis
         cells = column.cells or ()
         read = read_column(cells)
         problems = [_cell_finding(misread, column.header, cells[i], table, i) for i, misread in read.misread]
-        problems.extend(_uncounted(read.misread_count, column.header, table))
+        problems.extend(_others(read.misread_count, column, table))
         values, halves = read.values, read.half_units
         usable = bool(cells) and read.misread_count == 0
         last = Fraction(Decimal(cells[-1].strip(" \t").replace("\u2212", "-"))) if usable else Fraction(0)
         return LedgerColumn(column.header, role, values, halves, last), problems
     values = column.numbers
     with np.errstate(invalid="ignore"):
-        bad = np.flatnonzero(~((np.abs(values) <= 1e15) & ((values == 0) | (np.abs(values) >= 1e-300))))
+        bad = np.flatnonzero(~((np.abs(values) <= LARGEST) & ((values == 0) | (np.abs(values) >= SMALLEST))))
     problems = []
     for i in bad[:MOST_MISREAD]:
         misread = out_of_range(Decimal(repr(float(values[i])))) or explain(str(values[i]))
         problems.append(_cell_finding(misread, column.header, repr(float(values[i])), table, int(i)))
-    problems.extend(_uncounted(len(bad), column.header, table))
+    problems.extend(_others(len(bad), column, table))
     last = Fraction(0) if len(bad) or not len(values) else Fraction(float(values[-1]))
+    if len(bad):
+        values = values.copy()
+        values[bad] = np.nan
     return LedgerColumn(column.header, role, values, None, last), problems
 
 
@@ -111,12 +114,10 @@ def _cell_finding(misread: Misread, header: str, raw: str, table: Table, index: 
     )
 
 
-def _uncounted(count: int, header: str, table: Table) -> list[Finding]:
+def _others(count: int, column: Column, table: Table) -> tuple[Finding, ...]:
     """The rest of a column's unreadable cells, as a number."""
-    if count <= MOST_MISREAD:
-        return []
-    message = f"{count - MOST_MISREAD} more cells of this column are no figures, {count} in all."
-    return [stop("cell-number", message, file=table.file, column=header)]
+    what = "cells of this column are no figures"
+    return rest("cell-number", count, MOST_MISREAD, what, file=table.file, column=column.header)
 
 
 def _time_findings(time: LedgerColumn, table: Table) -> list[Finding]:
@@ -135,10 +136,12 @@ def _time_findings(time: LedgerColumn, table: Table) -> list[Finding]:
         for i in np.flatnonzero(odd)[:MOST_MISREAD]:
             found(int(i), "time-cell", "is not a calendar year of four digits; use a column 't' for other times.")
     closest = CLOSEST_ROWS * (values.max() - values.min())
-    for i in np.flatnonzero(~(np.diff(values) > closest))[:MOST_MISREAD] + 1:
+    disorder = np.flatnonzero(~(np.diff(values) > closest)) + 1
+    for i in disorder[:MOST_MISREAD]:
         before = f"line {table.lines[i - 1]}"
         if values[i] < values[i - 1]:
             found(int(i), "time-order", f"is earlier than {before}; sort the rows by time.")
         else:
             found(int(i), "time-order", f"is the same time as {before}; keep one row for each time.")
+    findings.extend(rest("time-order", len(disorder), MOST_MISREAD, "rows repeat a time or go back", file=table.file))
     return findings

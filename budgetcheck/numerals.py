@@ -19,6 +19,10 @@ from .quadrature import Floats
 LARGEST = 1e15
 """Largest absolute value accepted; with 16 digits a unit of it is still seen."""
 
+SMALLEST_EXPONENT = -100
+SMALLEST = 1e-100
+"""Smallest absolute value accepted other than zero; products of a few such figures stay inside floating point."""
+
 LONGEST = 100
 """Characters in one figure."""
 
@@ -45,8 +49,8 @@ class Misread:
 
 @dataclass(frozen=True, eq=False)
 class FigureColumn:
-    """values (n,), NaN where there is no figure, and half_units (n,), half a unit in the last printed digit; misread: index in the
-    column and reason, of the first MOST_MISREAD; misread_count: of all."""
+    """values (n,), NaN where there is no figure, and half_units (n,), half a unit in the last printed digit; misread: index
+    in the column and reason, of the first MOST_MISREAD; misread_count: of all."""
 
     values: Floats
     half_units: Floats
@@ -71,7 +75,7 @@ def out_of_range(figure: Decimal) -> Misread | None:
     # by its exponent first: comparing would expand a huge one
     if figure and (figure.adjusted() > 15 or abs(figure) > Decimal(LARGEST)):
         return Misread("not-finite", f"is larger than {LARGEST:.0e} can be handled;", "use `unit` to scale the amounts.")
-    if figure and figure.adjusted() < -300:
+    if figure and figure.adjusted() < SMALLEST_EXPONENT:
         return Misread("not-finite", "is not zero, but too small to be told from it;", "write 0 if zero is meant.")
     return None
 
@@ -94,7 +98,7 @@ def read_column(cells: Sequence[str]) -> FigureColumn:
         value = float(f"{mantissa}e{power}" if power else mantissa)
         last_digit = int(power or 0) - len(after or only or "")
         problem = None
-        if not value <= LARGEST or value < 1e-300 or last_digit > MOST_EXPONENT:
+        if not value <= LARGEST or value < SMALLEST or last_digit > MOST_EXPONENT:
             problem = out_of_range(Decimal(text.replace("\u2212", "-")))
         if problem is not None:
             count += 1

@@ -94,12 +94,12 @@ class Geometric:
         left, right = values[:, :-1], values[:, 1:]
         # the square root of each factor, not of the product, which could overflow
         middle = np.sqrt(left) * np.sqrt(right)
-        ratio = right / left
         # log1p of the relative difference keeps its accuracy where neighbours are nearly equal
-        near = np.abs(ratio - 1.0) < 0.5
-        slope = np.where(near, np.log1p(np.where(near, (right - left) / left, 0.0)), np.log(ratio)) / 2.0
+        near = np.abs(right - left) < 0.5 * left
+        slope = np.where(near, np.log1p(np.where(near, (right - left) / left, 0.0)), np.log(right) - np.log(left)) / 2.0
+        logs = np.where(near, 0.0, np.abs(np.log(left)) + np.abs(np.log(right)))
         q = np.stack([np.zeros_like(slope), slope], axis=-1)
-        q_error = relative_error + 4.0 * UNIT * (1.0 + np.abs(slope))
+        q_error = relative_error + 4.0 * UNIT * (1.0 + np.abs(slope) + logs)
         p_error = (relative_error + 4.0 * UNIT) * middle
         return Coefficients(p=middle[:, :, None], q=q, p_error=p_error, q_error=q_error)
 

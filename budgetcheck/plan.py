@@ -87,18 +87,18 @@ def build(rows: Rows, conventions: Conventions, path: str) -> Plan:
     flows = _Flows(c, rows, amounts_path, mesh)
     streams, rates = flows.streams()
     interest = _interest(rows, c, rates, mesh)
-    growth = c.g + c.n
+    growth = c.growth
     net = interest.beyond - growth
     decay = {"income": net - c.income_growth, "consumption": net - c.consumption_growth}
     growth_exponent = Exponent.constant(growth, mesh)
     own = c.basis == "per effective unit"
     exponent = growth_exponent if own else Exponent.constant(basis_rate(c, c.basis), mesh)
-    factor = float(basis_factor(c, c.basis))
+    factor = _read(basis_factor(c, c.basis))
     return Plan(
         rows=rows,
         conventions=c,
         mesh=mesh,
-        streams=streams.restated(exponent, factor=factor, factor_error=UNIT),
+        streams=streams.restated(exponent, factor=factor),
         interest=interest,
         growth=growth,
         growth_exponent=growth_exponent,
@@ -114,24 +114,26 @@ def build(rows: Rows, conventions: Conventions, path: str) -> Plan:
 
 
 def _read(figure: Fraction) -> Bounded:
-    """A declared figure as a floating-point number, right to one rounding."""
+    """A declared figure as a floating-point number, right to one rounding, or exactly where it is a small whole number."""
     value = float(figure)
-    return Bounded(value, UNIT * abs(value))
+    exact = figure.denominator == 1 and abs(figure.numerator) <= 2**53
+    return Bounded(value, 0.0 if exact else UNIT * abs(value))
 
 
 def basis_factor(c: Conventions, basis: str) -> Fraction:
     """What one unit of money in that basis is per household at t = 0."""
-    return {
-        "per person": c.members,
-        "per household": Fraction(1),
-        "economy": 1 / c.households,
-        "per effective unit": c.productivity * c.members,
-    }[basis]
+    if basis == "per household":
+        return Fraction(1)
+    if basis == "economy":
+        return 1 / c.households
+    return c.members if basis == "per person" else c.productivity * c.members
 
 
 def basis_rate(c: Conventions, basis: str) -> Rate:
     """The rate at which that factor grows."""
-    return {"per person": c.n, "per effective unit": c.g + c.n}.get(basis, ZERO)
+    if basis == "per person":
+        return c.n
+    return c.growth if basis == "per effective unit" else ZERO
 
 
 def _mesh(timeline: Timeline, lengths: Floats, *, halves: bool) -> Mesh:

@@ -60,6 +60,8 @@ class Rate:
         return self._combined(other, -1)
 
     def _combined(self, other: Rate, sign: int) -> Rate:
+        if other is ZERO:
+            return self
         factors = dict(self.logs)
         for conversions, factor in other.logs:
             factors[conversions] = factors.get(conversions, Fraction(1)) * factor**sign

@@ -14,8 +14,9 @@ from dataclasses import dataclass, replace
 import numpy as np
 from numpy.typing import NDArray
 
+from .bounded import ONE, Bounded
 from .quadrature import EXP_ERROR, SAFETY, UNIT, Floats, Integral, Mask, integrate, running_sum, summed
-from .rates import ZERO, Rate
+from .rates import Rate
 
 
 @dataclass(frozen=True, kw_only=True, eq=False)
@@ -77,24 +78,12 @@ class RatePath:
         """The same rate throughout."""
         return cls(coefficients=np.full((intervals, 1), rate.value), error=np.full(intervals, rate.error), beyond=rate)
 
-    def __sub__(self, other: RatePath) -> RatePath:
-        width = max(self.coefficients.shape[1], other.coefficients.shape[1])
-        coefficients = _padded(self.coefficients, width) - _padded(other.coefficients, width)
-        rounding = UNIT * summed(np.abs(coefficients))
-        return RatePath(
-            coefficients=coefficients,
-            error=(self.error + other.error + rounding) * SAFETY,
-            beyond=self.beyond - other.beyond,
-        )
-
-    def __add__(self, other: RatePath) -> RatePath:
-        return self - other.scaled(-1)
-
-    def scaled(self, sign: int) -> RatePath:
-        """The path itself (1) or its negative (−1)."""
-        return RatePath(
-            coefficients=sign * self.coefficients, error=self.error, beyond=self.beyond if sign > 0 else ZERO - self.beyond
-        )
+    def less(self, rate: Rate) -> RatePath:
+        """The path less a constant rate."""
+        coefficients = self.coefficients.copy()
+        coefficients[:, 0] -= rate.value
+        error = (self.error + rate.error + UNIT * np.abs(coefficients[:, 0])) * SAFETY
+        return RatePath(coefficients=coefficients, error=error, beyond=self.beyond - rate)
 
     def split(self, mask: Mask) -> RatePath:
         """The same path on the halved mesh."""
@@ -230,22 +219,19 @@ class Streams:
     lumps: Lumps | None = None
     tail: Tail | None = None
 
-    def restated(self, exponent: Exponent | None, *, sign: int = 1, factor: float = 1.0, factor_error: float = 0.0) -> Streams:
-        """The streams times factor·exp(sign·E(t)), E = 0 where there is no exponent; factor_error is relative.
-
-        Discounting is sign = −1.
-        """
-        relative = factor_error + 2.0 * UNIT
-        p, p_error = self.p, self.p_error
-        if factor != 1.0 or factor_error > 0.0:
-            p = self.p * factor
-            p_error = (abs(factor) * self.p_error + relative * summed(np.abs(p))) * SAFETY
+    def restated(self, exponent: Exponent | None, *, sign: int = 1, factor: Bounded = ONE) -> Streams:
+        """The streams times factor·exp(sign·E(t)), E = 0 where there is no exponent. Discounting is sign = −1."""
+        p, p_error, lumps, tail = self.p, self.p_error, self.lumps, self.tail
+        if factor != ONE:
+            relative = factor.bound / abs(factor.value) + 2.0 * UNIT
+            p = self.p * factor.value
+            p_error = (abs(factor.value) * self.p_error + relative * summed(np.abs(p))) * SAFETY
+            lumps, tail = self._scaled(factor.value, relative)
         q, q_error = self.q, self.q_error
         if exponent is not None:
             width = max(self.q.shape[2], exponent.coefficients.shape[1])
             q = _padded(self.q, width) + sign * _padded(exponent.coefficients, width)[None]
             q_error = (self.q_error + exponent.error + UNIT * summed(np.abs(q))) * SAFETY
-        lumps, tail = self._scaled(factor, relative)
         if exponent is not None:
             lumps = None if lumps is None else lumps.restated(exponent, sign)
             tail = None if tail is None else tail.restated(exponent, sign)

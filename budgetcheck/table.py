@@ -17,7 +17,7 @@ from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
-from .findings import Finding, InputRefused, stop
+from .findings import Finding, InputRefused, rest, stop
 from .quadrature import Floats
 from .text import folded, visible
 
@@ -44,13 +44,15 @@ class Column:
 
 @dataclass(frozen=True, eq=False)
 class Table:
-    """file: the name to show; columns; lines (n,): the physical line of each row; sha256 of the input; findings: faults of
-    structure, with which the rows that are sound can still be read for more."""
+    """file: the name to show; columns; lines (n,): the physical line of each row; sha256 of the input; ragged: rows of
+    another width than the header, which are left out; findings: faults of structure, with which the rows that are sound can
+    still be read for more."""
 
     file: str
     columns: tuple[Column, ...]
     lines: tuple[int, ...]
     sha256: str
+    ragged: int = 0
     findings: tuple[Finding, ...] = ()
 
 
@@ -64,6 +66,8 @@ def read_csv(source: str | Path) -> Table:
 
 def _bytes_of(source: str | Path) -> tuple[bytes, str]:
     if str(source) == STANDARD_INPUT:
+        if sys.stdin is None:
+            raise InputRefused([stop("structure", "is closed; send the table to it, or name a file.", file="standard input")])
         return sys.stdin.buffer.read(MOST_BYTES + 1), "standard input"
     path = Path(source)
     name = visible(str(source))
@@ -139,22 +143,23 @@ def _table_of(rows: list[tuple[int, list[str]]], name: str, sha256: str) -> Tabl
         hint = "give every row one cell for each column (a number with a comma in it needs quotes)."
         shown = ",".join(record[: width + 2])
         findings.append(stop("structure", message, file=name, row=line, raw=shown, hint=hint))
-    if len(ragged) > MOST_RAGGED:
-        findings.append(stop("structure", f"{len(ragged) - MOST_RAGGED} more rows have another width.", file=name))
+    findings.extend(rest("structure", len(ragged), MOST_RAGGED, "rows have another width than the header", file=name))
     sound = [(line, record) for line, record in rows[1:] if len(record) == width]
     cells = list(zip(*(record for _, record in sound), strict=True)) if sound else [()] * width
     columns = tuple(Column(header=head.strip(), cells=tuple(cell)) for head, cell in zip(header, cells, strict=True))
     lines = tuple(line for line, _ in sound)
-    return Table(file=name, columns=columns, lines=lines, sha256=sha256, findings=tuple(findings))
+    return Table(file=name, columns=columns, lines=lines, sha256=sha256, ragged=len(ragged), findings=tuple(findings))
 
 
 def _header_findings(header: list[str], line: int, name: str) -> list[Finding]:
     findings: list[Finding] = []
+    # nothing that follows would mean anything if these are wrong
     if len(header) > MOST_COLUMNS:
-        return [stop("too-large", f"the header has {len(header)} columns, more than {MOST_COLUMNS}.", file=name, row=line)]
+        message = f"the header has {len(header)} columns, more than {MOST_COLUMNS}."
+        raise InputRefused([stop("too-large", message, file=name, row=line)])
     if len(header) == 1 and any(mark in header[0] for mark in ";\t|"):
         hint = "separate the columns with commas."
-        return [stop("structure", "has no comma in it;", file=name, row=line, raw=header[0], hint=hint)]
+        raise InputRefused([stop("structure", "has no comma in it;", file=name, row=line, raw=header[0], hint=hint)])
     seen: dict[str, str] = {}
     for position, head in enumerate(header, start=1):
         key = folded(head)

@@ -8,6 +8,9 @@ _HIDDEN = frozenset({"Cc", "Cf", "Cs", "Co", "Cn", "Zl", "Zp"})
 """Unicode categories that a reader cannot see or that steer a terminal: controls (C0, DEL, C1), bidirectional and zero-width
 format characters, surrogates, private use, unassigned, line and paragraph separators."""
 
+_BLANK_LETTERS = frozenset("\u115f\u1160\u3164\uffa0\u2800")
+"""Letters and symbols with no ink: Hangul fillers, the empty Braille pattern."""
+
 _MOST_MARKS = 3
 """Combining marks kept in a row; longer runs smear over neighbouring lines."""
 
@@ -29,7 +32,7 @@ def visible(text: str, limit: int = 80) -> str:
         marks = marks + 1 if category in ("Mn", "Me") else 0
         if marks > _MOST_MARKS:
             continue
-        shown.append(_escaped(character) if category in _HIDDEN else character)
+        shown.append(_escaped(character) if category in _HIDDEN or character in _BLANK_LETTERS else character)
     return _shortened("".join(shown), limit)
 
 

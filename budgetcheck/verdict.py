@@ -57,11 +57,11 @@ _UNITS_AT_FAULT = (
 def scale_of(account: Account) -> float:
     """What slack is measured against: lifetime resources, or where these are zero or infinite lifetime consumption and
     requirement, or where that is infinite too the rows' part."""
-    wealth = max(account.wealth.value, 0.0)
+    wealth = max(account.initial_wealth.value, 0.0)
     resources = wealth + account.income.whole.value
     if account.income.reach is Reach.FINITE and resources > 0.0:
         return resources
-    uses = account.consumption.whole.value + max(account.terminal.value, 0.0)
+    uses = account.consumption.whole.value + max(account.terminal_wealth.value, 0.0)
     if account.consumption.reach is Reach.FINITE and uses > 0.0:
         return uses
     return max(wealth + account.income.rows.value, account.consumption.rows.value, 0.0)

@@ -8,11 +8,13 @@ exact as the quadrature itself.
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+import math
+from dataclasses import dataclass, replace
 
 import numpy as np
 
-from .budget import Budget
+from .budget import Budget, Reach
+from .plan import LARGEST_EXPONENT, OutOfRange
 from .quadrature import ANTIDERIVATIVE, NODES, POINTS, WEIGHTS, Floats, at_nodes, polynomial, running_sum
 from .streams import Exponent
 
@@ -29,16 +31,25 @@ class Extreme:
     error: float
 
 
+@dataclass(frozen=True, kw_only=True)
+class HouseholdWealth:
+    """minimum: the lowest wealth; largest_debt: the same as a positive amount, None without debt."""
+
+    minimum: Extreme
+    largest_debt: Extreme | None
+
+
 @dataclass(frozen=True, kw_only=True, eq=False)
 class WealthPath:
-    """discounted_nodes (m, 16): D at the nodes; per_unit, per_household: the lowest wealth; largest_debt: as a positive amount
-    of household money, None without debt; first_negative: the first date with wealth below zero beyond its error."""
+    """minimum: the lowest wealth per unit of human capital; per_household: in household money; first_negative: the first date
+    with wealth below zero beyond its error; first_insolvent: the first date at which what is left to consume is worth more
+    than all there is to pay for it, beyond its error; discounted_nodes (m, 16): D at the nodes."""
 
-    discounted_nodes: Floats
-    per_unit: Extreme
-    per_household: Extreme
-    largest_debt: Extreme | None
+    minimum: Extreme
+    per_household: HouseholdWealth
     first_negative: float | None
+    first_insolvent: float | None
+    discounted_nodes: Floats
 
 
 @dataclass(frozen=True, eq=False)
@@ -136,36 +147,62 @@ def wealth_path(budget: Budget, reconstruction: float) -> WealthPath:
     """The path of wealth; reconstruction: the estimate of what interpolation between rows leaves open, in units of slack."""
     plan, unit = budget.plan, budget.unit
     signs = np.where(plan.incomes, 1.0, -1.0)
-    net = np.tensordot(signs, unit.integral.nodes, axes=1)
-    flows = signs @ unit.integral.value
-    before, after = _at_breaks(budget, signs, flows)
-    nodes = after[:-1, None] + (plan.mesh.lengths / 2.0)[:, None] * (net @ ANTIDERIVATIVE.T)
     error = unit.account.rows_slack.bound + (reconstruction if np.isfinite(reconstruction) else 0.0)
-
-    def course(exponent: Exponent | None, factor: float) -> _Course:
-        mesh = plan.mesh
-        return _Course(mesh.breaks, mesh.lengths, before, after, nodes, net, exponent, factor, error)
-
-    per_unit = course(unit.discount, 1.0)
-    household = course(budget.household.discount, plan.scale.value).lowest()
+    course = _course(budget, unit.account.initial_wealth.value, signs, error)
+    _check_range(course, (unit.discount, budget.household.discount))
+    own = replace(course, exponent=unit.discount)
+    household = replace(course, exponent=budget.household.discount, factor=plan.scale.value).lowest()
     debt = household.value < -household.error
     return WealthPath(
-        discounted_nodes=nodes,
-        per_unit=per_unit.lowest(),
-        per_household=household,
-        largest_debt=Extreme(t=household.t, value=-household.value, error=household.error) if debt else None,
-        first_negative=per_unit.first_below(),
+        minimum=own.lowest(),
+        per_household=HouseholdWealth(
+            minimum=household,
+            largest_debt=Extreme(t=household.t, value=-household.value, error=household.error) if debt else None,
+        ),
+        first_negative=own.first_below(),
+        first_insolvent=_first_insolvent(budget, error),
+        discounted_nodes=course.nodes,
     )
 
 
-def _at_breaks(budget: Budget, signs: Floats, flows: Floats) -> tuple[Floats, Floats]:
-    """D at breakpoints before and after the lump sums there, which are netted first."""
-    lumps = budget.unit.streams.lumps
-    start = budget.unit.account.wealth.value
-    if lumps is None:
-        running = start + running_sum(flows)[0]
-        return running, running
-    netted = signs @ lumps.values()[0]
-    running = start + running_sum(flows)[0]
-    paid = running_sum(netted)[0]
-    return running + paid[:-1], running + paid[1:]
+def _first_insolvent(budget: Budget, error: float) -> float | None:
+    """The date from which k(t) falls short of −(present value of wages still to come, less the terminal requirement).
+
+    In discounted form the shortfall is S + ∫_t e^{−Λ}c < 0: what is left to consume no longer covers the missing slack.
+    """
+    account = budget.unit.account
+    slack, consumption = account.slack.value, account.consumption
+    if consumption.reach is not Reach.FINITE or account.income.reach is not Reach.FINITE or slack >= -error:
+        return None
+    start = slack + consumption.whole.value
+    return _course(budget, start, np.where(budget.plan.incomes, 0.0, -1.0), error).first_below()
+
+
+def _course(budget: Budget, start: float, signs: Floats, error: float) -> _Course:
+    """start + ∫_0^t of the signed discounted streams, on the mesh."""
+    mesh, integral, lumps = budget.plan.mesh, budget.unit.integral, budget.unit.streams.lumps
+    net = np.tensordot(signs, integral.nodes, axes=1)
+    before = after = start + running_sum(signs @ integral.value)[0]
+    if lumps is not None:
+        # the sums of one date are netted first
+        paid = running_sum(signs @ lumps.values()[0])[0]
+        before, after = before + paid[:-1], after + paid[1:]
+    nodes = after[:-1, None] + (mesh.lengths / 2.0)[:, None] * (net @ ANTIDERIVATIVE.T)
+    return _Course(mesh.breaks, mesh.lengths, before, after, nodes, net, None, 1.0, error)
+
+
+def _check_range(course: _Course, exponents: tuple[Exponent | None, ...]) -> None:
+    """Refuse a path whose undiscounted amounts floating point cannot carry."""
+    size = math.log(max(float(np.abs(course.nodes).max()), float(np.abs(course.after).max()), 1.0))
+    for exponent in exponents:
+        if exponent is None or size + exponent.largest <= LARGEST_EXPONENT:
+            continue
+        # only now is it worth looking date by date: where discounted wealth is large, its exponent may be negative
+        at_nodes_size = at_nodes(exponent.coefficients) + np.log(np.maximum(np.abs(course.nodes), 1.0))
+        at_breaks_size = exponent.at + np.log(np.maximum(np.maximum(np.abs(course.after), np.abs(course.before)), 1.0))
+        largest = max(float(at_nodes_size.max()), float(at_breaks_size.max()))
+        if largest > LARGEST_EXPONENT:
+            raise OutOfRange(
+                f"wealth along the plan reaches e^{largest:.4g}, beyond the supported e^{LARGEST_EXPONENT:g}; "
+                "shorten the horizon, or check r, g and n (fractions a year)"
+            )

@@ -28,7 +28,8 @@ def share_used(claimed: Claimed, truth: arb) -> float:
     """True error over claimed bound, rounded up; zero where both are zero. At most 1 where the claim is right."""
     with ctx.workprec(PRECISION):
         error = abs(arb(claimed.value) - truth)
-        if error == 0:
+        # a claim of no error at all is right where the ball of the truth cannot tell the two apart
+        if error == 0 or (claimed.bound == 0 and error.contains(0)):
             return 0.0
         return float((error / arb(claimed.bound)).upper()) if claimed.bound > 0 else float("inf")
 
@@ -36,11 +37,13 @@ def share_used(claimed: Claimed, truth: arb) -> float:
 def claims(found: Assessment, truth: Exact) -> list[tuple[str, Claimed, arb]]:
     """Every figure with a bound beside its exact value: slack and each present value, by both routes."""
     result: list[tuple[str, Claimed, arb]] = []
-    values = found.present_values
     with ctx.workprec(PRECISION):
-        for route, account, scale in (("unit", values.unit, arb(1)), ("household", values.household, truth.scale)):
+        for route, account, scale in (
+            ("unit", found.present_values, arb(1)),
+            ("household", found.present_values_per_household, truth.scale),
+        ):
             slack = found.slack.per_effective_unit if route == "unit" else found.slack.per_household
-            pairs = [("wealth", account.wealth, truth.wealth), ("terminal", account.terminal, truth.terminal)]
+            pairs = [("wealth", account.initial_wealth, truth.wealth), ("terminal", account.terminal_wealth, truth.terminal)]
             sides = [(side, truth.lines[side.name]) for side in account.lines]
             sides += [(account.income, truth.income), (account.consumption, truth.consumption)]
             pairs += [(side.name, side.whole, value) for side, value in sides if value is not None and side.reach == "finite"]
@@ -54,7 +57,7 @@ def misjudged(found: Assessment, truth: Exact) -> list[str]:
     """Columns whose present value is called finite, infinite or unknown when it is not."""
     wrong = []
     constant = any(entry.key == "market.r" and entry.value != "column" for entry in found.assumptions)
-    for line in found.present_values.unit.lines:
+    for line in found.present_values.lines:
         near = abs(float(truth.decays[line.role].mid())) <= UNDECIDABLE
         finite = truth.lines[line.name] is not None
         right = near and not constant if line.reach == "unknown" else (line.reach == "finite") is finite

@@ -143,7 +143,7 @@ def test_a_fault_of_the_program_exits_1_in_one_line(
     def broken(*_: object, **__: object) -> None:
         raise RuntimeError("a bug")
 
-    monkeypatch.setattr("budgetcheck.assessment.assess", broken)
+    monkeypatch.setattr("budgetcheck.pipeline.assess", broken)
     monkeypatch.setattr(sys, "argv", ["budgetcheck", "assess", "plan.csv"])
     with pytest.raises(SystemExit, match="1"):
         main()

@@ -185,7 +185,7 @@ def test_the_right_plan_passes(name: str) -> None:
 @pytest.mark.parametrize("name", SAMPLING)
 def test_present_values_over_the_whole_life(name: str) -> None:
     """Rows and tail together give the published present values, as closely as cubic pieces follow the paths."""
-    values = whole(name).present_values.unit
+    values = whole(name).present_values
     found = (values.income.whole.value, values.consumption.whole.value)
     assert found == pytest.approx(WHOLE_LIFE[name], rel=5e-8)
 
@@ -255,8 +255,8 @@ def test_fifty_years_that_end_with_the_wealth_the_path_has_then(name: str) -> No
     settings = path.settings(tail=None)
     settings["horizon"] = {"kind": "finite", "terminal_wealth": float(path.at(np.array([50.0])).k[0])}
     found = assess(path.table(dates(20, 50)), settings).require()
-    values = found.present_values.unit
-    parts = (values.income.whole.value, values.consumption.whole.value, values.terminal.value)
+    values = found.present_values
+    parts = (values.income.whole.value, values.consumption.whole.value, values.terminal_wealth.value)
     assert parts == pytest.approx(FIFTY_YEARS[name], rel=1e-7)
     assert abs(slack(found)) <= found.decision.error + 1e-12 * found.decision.scale
 

@@ -111,7 +111,7 @@ def test_the_money_unit_changes_nothing(case: Case, unit: float) -> None:
 
 
 def _gross(case: Case) -> float:
-    values = case.assess().present_values.household
+    values = case.assess().present_values_per_household
     return abs(values.income.whole.value) + abs(values.consumption.whole.value)
 
 
@@ -137,7 +137,7 @@ def test_splitting_the_plan_adds_up(case: Case, data: st.DataObject) -> None:
     rest = Case(case.table[row:], case.assumptions).having("household", wealth=handed_on).assess()
     whole, bound = slack(case.assess())
     (one, one_bound), (two, two_bound) = slack(first), slack(rest)
-    factor = first.present_values.household.terminal.value / handed_on
+    factor = first.present_values_per_household.terminal_wealth.value / handed_on
     # the second part reads its dates anew, as differences of floating-point times
     rounding = 1e-13 * factor * _gross(case)
     assert abs(whole - (one + factor * two)) <= bound + one_bound + 1.01 * factor * two_bound + rounding
@@ -161,7 +161,7 @@ def test_weights_give_the_present_values(case: Case) -> None:
     """Where values enter linearly a present value is the sum of weight times value; a negative weight is reported."""
     assume(case.assumptions["amounts"].get("path") != "geometric")
     assessment = case.assess()
-    lines = assessment.present_values.unit.lines
+    lines = assessment.present_values.lines
     for line, weights, column in zip(lines, assessment.weights.amounts, ("wage", "consumption"), strict=True):
         assume(line.reach == "finite")
         value = math.fsum(weights * case.table[column].to_numpy())
@@ -181,8 +181,8 @@ def test_a_column_may_be_divided(rows: list[tuple[float, float, float]], r: floa
     summed = parts.assign(wage=[a + b for a, b in zip(first, second, strict=True)]).drop(columns="pension")
     divided = budgetcheck.assess(parts, {**stated, "columns": {"pension": "income"}})
     whole = budgetcheck.assess(summed, stated)
-    assert [line.name for line in divided.present_values.unit.lines] == ["wage", "pension", "consumption"]
-    one, two = divided.present_values.unit.income.whole, whole.present_values.unit.income.whole
+    assert [line.name for line in divided.present_values.lines] == ["wage", "pension", "consumption"]
+    one, two = divided.present_values.income.whole, whole.present_values.income.whole
     gross = math.fsum(abs(divided.weights.amounts[0])) * 2e5
     assert abs(one.value - two.value) <= one.bound + two.bound + ULP * gross
 

@@ -72,7 +72,7 @@ def only(findings: tuple[Finding, ...]) -> Finding:
         ("0.000", 0),
         ("-0", 0),
         ("0e5", 0),
-        ("1e-300", Fraction(1, 10**300)),
+        ("1e-100", Fraction(1, 10**100)),
     ],
 )
 def test_a_plain_figure_is_read_exactly(text: str, value: object) -> None:
@@ -107,7 +107,7 @@ NO_FIGURES = [
     ("1e999", "not-finite"),
     ("-1e400", "not-finite"),
     ("1e-400", "not-finite"),
-    ("1e-301", "not-finite"),
+    ("1e-101", "not-finite"),
     ("1.0000001e15", "not-finite"),
     # groups of digits, whatever joins them
     ("1,234", "cell-number"),

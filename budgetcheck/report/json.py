@@ -57,23 +57,23 @@ def render(assessment: Assessment) -> str:
             "consumption_scale": a.slack.consumption_scale,
             "level_per_year": a.slack.level_per_year,
         },
-        "present_values": _present_values(a.present_values.unit),
-        "present_values_per_household": _present_values(a.present_values.household),
+        "present_values": _present_values(a.present_values),
+        "present_values_per_household": _present_values(a.present_values_per_household),
         "routes": {"difference": a.routes_differ.value, "bound": a.routes_differ.bound},
         "error": _errors(a),
         "conditions": {name: _condition(condition) for name, condition in vars(a.conditions).items() if condition is not None},
         "wealth_path": {
-            "minimum": _extreme(a.wealth_path.per_unit),
+            "minimum": _extreme(a.wealth_path.minimum),
             "per_household": {
-                "minimum": _extreme(a.wealth_path.per_household),
-                "largest_debt": _extreme(a.wealth_path.largest_debt),
+                "minimum": _extreme(a.wealth_path.per_household.minimum),
+                "largest_debt": _extreme(a.wealth_path.per_household.largest_debt),
             },
             "first_negative": a.wealth_path.first_negative,
         },
         "tail": _tail(a),
         "assumptions": {visible(entry.key, 200): _assumption(entry) for entry in a.assumptions},
         "findings": [_finding(finding) for finding in a.findings[:MOST_FINDINGS]],
-        "findings_total": len(a.findings),
+        "findings_total": sum(finding.places for finding in a.findings),
     }
     return _dumped(body)
 
@@ -87,7 +87,7 @@ def render_refused(findings: Iterable[Finding]) -> str:
             "version": VERSION,
             "verdict": "REFUSED",
             "findings": [_finding(finding) for finding in found[:MOST_FINDINGS]],
-            "findings_total": len(found),
+            "findings_total": sum(finding.places for finding in found),
         }
     )
 
@@ -110,10 +110,10 @@ def _side(side: PresentValue, lines: Iterable[PresentValue]) -> dict[str, Any]:
 
 def _present_values(account: Account) -> dict[str, Any]:
     return {
-        "initial_wealth": _bounded(account.wealth),
+        "initial_wealth": _bounded(account.initial_wealth),
         "income": _side(account.income, account.lines),
         "consumption": _side(account.consumption, account.lines),
-        "terminal_wealth": _bounded(account.terminal),
+        "terminal_wealth": _bounded(account.terminal_wealth),
     }
 
 
@@ -137,7 +137,9 @@ def _finite(value: float | None) -> float | None:
 
 def _condition(condition: Condition) -> dict[str, Any]:
     figures = {name: _finite(value) for name, value in vars(condition).items() if name not in ("holds", "sentence")}
-    applicable = {name: value for name, value in figures.items() if value is not None or name == "limit"}
+    applicable: dict[str, Any] = {name: value for name, value in figures.items() if value is not None}
+    if condition.limit is not None and "limit" not in applicable:
+        applicable |= {"limit": None, "diverges": True}
     return {"holds": condition.holds, **applicable, "sentence": condition.sentence}
 
 
@@ -155,7 +157,11 @@ def _tail(a: Assessment) -> dict[str, Any]:
         "estimate": a.tail.estimate.why,
     }
     if a.tail.estimate.fit is not None:
-        found["fit"] = dict(vars(a.tail.estimate.fit))
+        fit = a.tail.estimate.fit
+        found["fit"] = {
+            name: {"long_run": curve.long_run, "departure": curve.departure, "speed": curve.speed}
+            for name, curve in vars(fit).items()
+        }
     return found
 
 

@@ -66,7 +66,7 @@ def render(assessment: Assessment, *, width: int = 80, color: bool = False, full
 def render_refused(findings: Sequence[Finding], *, width: int = 80, color: bool = False) -> str:
     """A refused input: what is wrong, where, and what to do."""
     page = _Page(width, color)
-    stops = sum(finding.severity is Severity.STOP for finding in findings)
+    stops = sum(finding.places for finding in findings if finding.severity is Severity.STOP)
     page.verdict("REFUSED", f"No verdict: {stops} {'fault' if stops == 1 else 'faults'} in the input.")
     page.findings(findings, full=False)
     return page.text_so_far()
@@ -139,8 +139,9 @@ class _Page:
         """By severity, at most a screenful of places for each rule."""
         counts: dict[str, int] = {}
         for finding in findings:
-            counts[finding.rule] = counts.get(finding.rule, 0) + 1
-            if full or counts[finding.rule] <= MOST_PER_RULE:
+            before = counts.get(finding.rule, 0)
+            counts[finding.rule] = before + finding.places
+            if full or before < MOST_PER_RULE:
                 self.console.print(Padding(Text(f"{finding.severity} [{finding.rule}] {finding.sentence}"), (0, 0, 0, 2)))
         for rule, count in counts.items():
             if not full and count > MOST_PER_RULE:
@@ -148,7 +149,7 @@ class _Page:
 
 
 def _account(a: Assessment, full: bool) -> Iterator[Row]:
-    unit, household = a.present_values.unit, a.present_values.household
+    unit, household = a.present_values, a.present_values_per_household
     scales = (_scale(unit), _scale(household))
 
     def row(name: str, values: tuple[Bounded | None, Bounded | None], sign: float = 1.0) -> Row:
@@ -158,7 +159,7 @@ def _account(a: Assessment, full: bool) -> Iterator[Row]:
         )
         return name, first, second
 
-    yield row("Initial wealth", (unit.wealth, household.wealth))
+    yield row("Initial wealth", (unit.initial_wealth, household.initial_wealth))
     for name, sign, sides in (
         ("Income", 1.0, (unit.income, household.income)),
         ("Consumption", -1.0, (unit.consumption, household.consumption)),
@@ -167,7 +168,7 @@ def _account(a: Assessment, full: bool) -> Iterator[Row]:
         lines = [pair for pair in zip(unit.lines, household.lines, strict=True) if pair[0].role == sides[0].role]
         for one, other in lines if len(lines) > 1 or full else ():
             yield row(f"  {visible(one.name, 28)}", (_whole(one), _whole(other)), sign)
-    yield row("Terminal requirement", (unit.terminal, household.terminal), -1.0)
+    yield row("Terminal requirement", (unit.terminal_wealth, household.terminal_wealth), -1.0)
     if a.slack.per_effective_unit is None or a.slack.per_household is None:
         yield "Slack", "not finite", "not finite"
         return
@@ -185,7 +186,7 @@ def _account(a: Assessment, full: bool) -> Iterator[Row]:
 def _scale(account: Account) -> float:
     sides = (account.income, account.consumption)
     finite = [abs(side.whole.value) for side in sides if side.reach is Reach.FINITE]
-    return max([abs(account.wealth.value), *finite, 1e-300])
+    return max([abs(account.initial_wealth.value), *finite, 1e-300])
 
 
 def _whole(side: PresentValue) -> Bounded | None:
@@ -193,15 +194,20 @@ def _whole(side: PresentValue) -> Bounded | None:
 
 
 def _conditions(a: Assessment) -> Iterator[tuple[str, str]]:
-    names = {"convergence": "Convergence", "no_ponzi": "No-Ponzi", "transversality": "Transversality"}
+    names = {
+        "convergence": "Convergence",
+        "no_ponzi": "No-Ponzi",
+        "transversality": "Transversality",
+        "solvency": "Solvency",
+    }
     answers = {True: "holds", False: "does not hold", None: "not known"}
     for field, name in names.items():
         condition = getattr(a.conditions, field)
         if condition is not None:
             yield name, f"{answers[condition.holds]}. {condition.sentence}"
-    low = a.wealth_path.per_household
+    low = a.wealth_path.per_household.minimum
     lowest = f"lowest {significant(low.value)} per household at {a.date(low.t)}"
-    if a.wealth_path.largest_debt is None:
+    if a.wealth_path.per_household.largest_debt is None:
         yield "Wealth", f"{lowest}; no debt before the end of the table's rows."
     else:
         first = a.wealth_path.first_negative
