@@ -253,11 +253,25 @@ def _span(ledger: Ledger, plan: Plan, source: str | None) -> Span:
     )
 
 
+def _rounded_share(amount: float, decision: Decision) -> str:
+    return f"{2.0 * amount / decision.scale:.1g}" if decision.scale > 0.0 else "that"
+
+
 def _computed_findings(ledger: Ledger, plan: Plan, weights: RowWeights, decision: Decision) -> list[Finding]:
     """Findings that only the computation shows."""
     found = []
     if decision.warning is not None:
         found.append(warn("net-discount", decision.warning, file=ledger.file))
+    rounding = weights.input_rounding
+    if decision.finite and rounding is not None and decision.verdict != "UNDECIDED":
+        slack, near = decision.slack, decision.error + rounding
+        turned = slack - near < -decision.threshold if decision.verdict == "PASS" else slack + near >= -decision.threshold
+        if turned:
+            message = (
+                f"rounding of the printed figures (± {rounding:.2g} per unit of human capital at the most) could by itself "
+                f"turn this verdict; print more digits, or declare a tolerance above {_rounded_share(rounding, decision)}."
+            )
+            found.append(warn("coarse-rounding", message, file=ledger.file))
     negative = np.argwhere(weights.amounts < 0.0)
     if len(negative):
         column, row = int(negative[0][0]), int(negative[0][1])

@@ -8,6 +8,8 @@ from __future__ import annotations
 
 import math
 from dataclasses import dataclass
+from fractions import Fraction
+from typing import Any
 
 from .budget import Account, Reach
 from .estimates import TailEstimate
@@ -35,12 +37,14 @@ class Errors:
 
 @dataclass(frozen=True, kw_only=True)
 class Decision:
-    """verdict: PASS, FAIL or UNDECIDED; reason and would_decide: sentences; error: e; threshold: τ·scale; finite: whether slack
-    is a finite figure; warning: what makes an infinite case suspicious."""
+    """verdict: PASS, FAIL or UNDECIDED; reason and would_decide: sentences; slack: S, of the rows alone where tails are
+    infinite; error: e; threshold: τ·scale; finite: whether slack is a finite figure; warning: what makes an infinite case
+    suspicious."""
 
     verdict: str
     reason: str
     would_decide: str | None
+    slack: float
     error: float
     threshold: float
     scale: float
@@ -70,117 +74,111 @@ def scale_of(account: Account) -> float:
 def decide(plan: Plan, account: Account, errors: Errors, tail: TailEstimate) -> Decision:
     """The verdict on the account per unit of human capital."""
     scale = scale_of(account)
-    threshold = plan.conventions.tolerance * scale
-    income, consumption = account.income.reach, account.consumption.reach
-    if income is Reach.FINITE and consumption is Reach.FINITE:
-        return _finite(account, errors, tail, threshold, scale)
+    case = _Case(plan, account, errors, tail, plan.conventions.tolerance * scale, scale)
+    if not case.infinite("income") and not case.infinite("consumption"):
+        return case.finite()
     if math.isinf(tail.error):
         reason = f"Beyond the last row present values are not finite as the table stands, but {tail.why}."
-        return _decision("UNDECIDED", reason, _DECLARE_TAIL, math.inf, threshold, scale)
-    if Reach.UNKNOWN in (income, consumption):
-        reason = (
-            "Beyond the last row r − g − n is within its own rounding of the growth, so that no present value can be stated."
-        )
-        decides = "A declared constant r (compared exactly), or a last row of r that differs from g + n."
-        return _decision("UNDECIDED", reason, decides, math.inf, threshold, scale)
-    return _infinite(plan, account, errors, threshold, scale)
+        return case.undecided(reason, _DECLARE_TAIL)
+    if Reach.UNKNOWN in (account.income.reach, account.consumption.reach):
+        reason = "Beyond the last row r − g − n is not told from the growth there, so that no present value can be stated."
+        return case.undecided(reason, "A declared constant r (compared exactly), or a last row of r that differs from g + n.")
+    return case.without_limit()
 
 
 _DECLARE_TAIL = 'A declared tail (for example tail = "balanced growth" under [horizon]), or rows further into the future.'
 
 
-def _decision(
-    verdict: str, reason: str, decides: str | None, error: float, threshold: float, scale: float, warning: str | None = None
-) -> Decision:
-    return Decision(
-        verdict=verdict,
-        reason=reason,
-        would_decide=decides,
-        error=error,
-        threshold=threshold,
-        scale=scale,
-        finite=False,
-        warning=warning,
-    )
+@dataclass(frozen=True, eq=False)
+class _Case:
+    """What a verdict is made from."""
 
+    plan: Plan
+    account: Account
+    errors: Errors
+    tail: TailEstimate
+    threshold: float
+    scale: float
 
-def _infinite(plan: Plan, account: Account, errors: Errors, threshold: float, scale: float) -> Decision:
-    """At least one present value is infinite: the leading term of the net stream decides."""
-    last = {role: sum(a.last for a in plan.rows.amounts if a.role == role) for role in ("income", "consumption")}
+    def last(self, role: str) -> Fraction:
+        """The sum of a role's last figures, exactly: what flows for ever after, up to a common factor."""
+        return sum((amounts.last for amounts in self.plan.rows.amounts if amounts.role == role), Fraction(0))
 
-    def decided(verdict: str, reason: str, warning: str | None = None) -> Decision:
-        return _decision(verdict, reason, None, 0.0, threshold, scale, warning)
+    def infinite(self, role: str) -> bool:
+        """Whether a role's present value is, or may be, infinite; flows that cancel for ever do not count."""
+        side = self.account.income if role == "income" else self.account.consumption
+        return side.reach is not Reach.FINITE and self.last(role) != 0
 
-    if account.consumption.reach is Reach.FINITE:
-        if last["income"] > 0:
-            reason = "Lifetime income is infinite while consumption is finite: nothing binds, and any such plan is affordable."
-            return decided("PASS", reason, _UNITS_AT_FAULT)
-        return decided("FAIL", "Income is negative for ever and its present value infinite: no wealth can make up for it.")
-    if account.income.reach is Reach.FINITE:
-        return decided("FAIL", "Lifetime consumption is infinite while income is finite: no initial wealth could pay for it.")
-    by_role = dict(zip((a.role for a in plan.rows.amounts), plan.decays, strict=True))
-    faster = (by_role["consumption"] - by_role["income"]).sign
-    net = last["income"] - last["consumption"]
-    if faster == 0 and net == 0:
-        return _net_of_equal_tails(account, errors, threshold, scale)
-    ahead = (faster or 0) > 0 if faster != 0 else net > 0
-    how = "outgrows" if faster != 0 else "exceeds"
-    if ahead and last["income"] > 0:
-        reason = f"Both present values are infinite, and beyond the last row income {how} consumption for ever: nothing binds."
-        return decided("PASS", reason, _UNITS_AT_FAULT)
-    reason = f"Both present values are infinite, and beyond the last row consumption {how} income for ever."
-    return decided("FAIL", reason)
+    def _decision(self, verdict: str, reason: str, **figures: Any) -> Decision:
+        given = {"would_decide": None, "slack": 0.0, "error": 0.0, "finite": False} | figures
+        return Decision(verdict=verdict, reason=reason, threshold=self.threshold, scale=self.scale, **given)
 
+    def undecided(self, reason: str, decides: str) -> Decision:
+        """Nothing can be said of slack."""
+        return self._decision("UNDECIDED", reason, would_decide=decides, error=math.inf)
 
-def _net_of_equal_tails(account: Account, errors: Errors, threshold: float, scale: float) -> Decision:
-    """Income and consumption are equal for ever after the last row: the rows decide."""
-    slack, error = account.rows_slack.value, account.rows_slack.bound + errors.reconstruction + errors.tail
-    beyond = "Both present values are infinite, but beyond the last row income equals consumption, so that the rows decide: "
-    verdict = "PASS" if slack - error >= -threshold else "FAIL" if slack + error < -threshold else "UNDECIDED"
-    reason = f"{beyond}{significant(abs(slack))} per unit of human capital is {'left' if slack >= 0 else 'missing'}."
-    decides = None if verdict != "UNDECIDED" else _what_decides(errors)
-    return Decision(
-        verdict=verdict,
-        reason=reason,
-        would_decide=decides,
-        error=error,
-        threshold=threshold,
-        scale=scale,
-        finite=True,
-    )
+    def without_limit(self) -> Decision:
+        """At least one present value is infinite: the leading term of the net stream decides."""
+        income, consumption = self.last("income"), self.last("consumption")
+        if not self.infinite("consumption"):
+            if income > 0:
+                reason = "Lifetime income is infinite while consumption is finite: nothing binds, any such plan is affordable."
+                return self._decision("PASS", reason, warning=_UNITS_AT_FAULT)
+            reason = "Income is negative for ever and its present value infinite: no wealth can make up for it."
+            return self._decision("FAIL", reason)
+        if not self.infinite("income"):
+            reason = "Lifetime consumption is infinite while income is finite: no initial wealth could pay for it."
+            return self._decision("FAIL", reason)
+        c = self.plan.conventions
+        faster = (c.income_growth - c.consumption_growth).sign
+        if faster == 0 and income == consumption:
+            return self._equal_for_ever()
+        both = "Both present values are infinite, and beyond the last row"
+        if faster is None:
+            return self.undecided(f"{both} it cannot be told which grows faster.", "Growth rates under one compounding.")
+        # what grows faster decides by its own sign, equal growth by the difference
+        ahead = income > 0 if faster > 0 else False if faster < 0 else income > consumption
+        how = "exceeds" if faster == 0 else "outgrows"
+        if ahead:
+            return self._decision("PASS", f"{both} income {how} consumption for ever: nothing binds.", warning=_UNITS_AT_FAULT)
+        return self._decision("FAIL", f"{both} consumption {how} income for ever.")
 
+    def _equal_for_ever(self) -> Decision:
+        """Income and consumption are equal after the last row: the rows decide."""
+        slack = self.account.rows_slack
+        error = slack.bound + self.errors.reconstruction + self.errors.tail
+        amount = f"{significant(abs(slack.value))} per unit of human capital is {'left' if slack.value >= 0 else 'missing'}"
+        reason = (
+            "Both present values are infinite, but beyond the last row income equals consumption, so that the rows decide: "
+            f"{amount}."
+        )
+        return self._by_rule(slack.value, error, passes=reason, fails=reason, open_reason=reason)
 
-def _finite(account: Account, errors: Errors, tail: TailEstimate, threshold: float, scale: float) -> Decision:
-    slack, e = account.slack.value, errors.in_verdict
-    decides = None
-    share = _share(slack, scale)
-    if slack - e >= -threshold:
-        verdict = "PASS"
-        if abs(slack) <= threshold + e:
-            reason = "The plan is affordable: it uses its lifetime resources exactly, within tolerance."
-        else:
-            reason = f"The plan is affordable: {share} of lifetime resources is left."
-    elif slack + e < -threshold:
-        verdict = "FAIL"
-        reason = f"The plan is not affordable: it needs {share} more than its lifetime resources."
-    else:
-        verdict = "UNDECIDED"
+    def finite(self) -> Decision:
+        """The rule of the verdict on a finite slack."""
+        slack, error = self.account.slack.value, self.errors.in_verdict
+        share, cause = _share(slack, self.scale), _largest(self.errors)
+        passes = f"The plan is affordable: {share} of lifetime resources is left."
+        if abs(slack) <= self.threshold + error:
+            passes = "The plan is affordable: it uses its lifetime resources exactly, within tolerance."
+        unknown = _share(error, self.scale) if math.isfinite(error) else "an unknown amount"
+        why = f": {self.tail.why}" if cause == "the tail" else ""
         side = "leave" if slack >= 0 else "lack"
-        unknown = _share(e, scale) if math.isfinite(e) else "an unknown amount"
-        cause = _largest(errors)
-        reason = f"The plan seems to {side} {share} of lifetime resources, but {cause} leaves {unknown} open."
-        if cause == "the tail":
-            reason = f"{reason[:-1]}: {tail.why}."
-        decides = _what_decides(errors)
-    return Decision(
-        verdict=verdict,
-        reason=reason,
-        would_decide=decides,
-        error=e,
-        threshold=threshold,
-        scale=scale,
-        finite=True,
-    )
+        return self._by_rule(
+            slack,
+            error,
+            passes=passes,
+            fails=f"The plan is not affordable: it needs {share} more than its lifetime resources.",
+            open_reason=f"The plan seems to {side} {share} of lifetime resources, but {cause} leaves {unknown} open{why}.",
+        )
+
+    def _by_rule(self, slack: float, error: float, *, passes: str, fails: str, open_reason: str) -> Decision:
+        figures = {"slack": slack, "error": error, "finite": True}
+        if slack - error >= -self.threshold:
+            return self._decision("PASS", passes, **figures)
+        if slack + error < -self.threshold:
+            return self._decision("FAIL", fails, **figures)
+        return self._decision("UNDECIDED", open_reason, would_decide=_what_decides(self.errors), **figures)
 
 
 def _share(amount: float, scale: float) -> str:
