@@ -17,8 +17,8 @@ import numpy as np
 
 from .budget import Budget, slack_only
 from .plan import OutOfRange, Plan, build
-from .quadrature import Floats, Mask
-from .settling import FEWEST_IN_WINDOW, Curves, LastRows, exponential, last_rows, slowing
+from .quadrature import Floats
+from .settling import FEWEST_IN_WINDOW, Curves, LastRows, exponential, fit, last_rows, slowing
 
 FEWEST_ROWS = 4
 """Below this a reconstruction error cannot be estimated."""
@@ -82,12 +82,13 @@ def tail(budget: Budget) -> TailEstimate:
         return TailEstimate(error=still, fit=None, why="the last rows do not move beyond the rounding of their figures")
     if len(rows.s) < FEWEST_IN_WINDOW:
         return TailEstimate(error=math.inf, fit=None, why="there are too few rows to fit a converging tail to")
-    fit = exponential(rows, moving)
-    if fit is None:
+    fits = fit(rows, moving)
+    settled = exponential(fits)
+    if settled is None:
         return TailEstimate(error=math.inf, fit=None, why="the last rows do not settle towards long-run values")
-    difference, why = _difference(rows, moving, fit, plan)
+    difference, why = _difference(rows, settled, slowing(fits), plan)
     error = weight * difference + still
-    return TailEstimate(error=error if math.isfinite(error) else math.inf, fit=fit, why=why)
+    return TailEstimate(error=error if math.isfinite(error) else math.inf, fit=settled, why=why)
 
 
 def _lasting_shift(rows: LastRows, shift: Floats, plan: Plan) -> float:
@@ -101,18 +102,17 @@ def _lasting_shift(rows: LastRows, shift: Floats, plan: Plan) -> float:
     return float((shift[0] + shift[1]) / decay + net / decay**2 * shift[2])
 
 
-def _difference(rows: LastRows, moving: Mask, fit: Curves, plan: Plan) -> tuple[float, str]:
+def _difference(rows: LastRows, settled: Curves, slower: Curves | None, plan: Plan) -> tuple[float, str]:
     """How far the tails fitted to the last rows are from balanced growth, valued at the last row, and why."""
     growth = plan.growth.value
     now = float(rows.values[2, -1]) - growth
     if now <= 0.0:
         return math.inf, "r does not exceed g + n at the last row, and still moves"
     balanced = float(rows.values[0, -1] - rows.values[1, -1]) / now
-    difference = abs(fit.value(growth) - balanced)
+    difference = abs(settled.value(growth) - balanced)
     if math.isinf(difference):
         return math.inf, "the fitted long-run r does not exceed g + n"
     why = "a tail that goes on settling as the last rows do, fitted to them, differs by half of this"
-    slower = slowing(rows, moving)
     if slower is None:
         return difference, why
     other = _value(slower, growth) - balanced

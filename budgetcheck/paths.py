@@ -16,7 +16,7 @@ from functools import cached_property
 
 import numpy as np
 
-from .quadrature import SAFETY, UNIT, Floats, Mask, polynomial
+from .quadrature import SAFETY, UNIT, Floats, Mask, polynomial, summed
 
 _HERMITE = np.array([[2.0, -3.0, 0.0, 1.0], [2.0, 3.0, 0.0, -1.0], [1.0, -1.0, -1.0, 1.0], [-1.0, -1.0, 1.0, 1.0]]) / 4.0
 """Cubic Hermite basis on [−1, 1] in powers of z: value left, value right, derivative left, derivative right."""
@@ -161,31 +161,37 @@ class Smooth:
         right[:, -1] -= right_end
         return right, left_end, right_end
 
-    def _slopes(self, values: Floats, relative_error: Floats | float) -> tuple[Floats, Floats]:
-        """Slopes at the rows and proved bounds on their error, both (c, n), for n ≥ 4 rows."""
+    def _slopes(self, values: Floats, d: Floats) -> Floats:
+        """Slopes at the rows, (c, n), for n ≥ 4 rows, from the divided differences d, (c, n − 1)."""
         h = self.lengths
-        d = np.diff(values, axis=1) / h
-        d_error = (np.abs(values[:, :-1]) + np.abs(values[:, 1:])) / h * (relative_error + UNIT) + 3.0 * UNIT * np.abs(d)
         right, left_end, right_end = self._right_sides(d)
         inner = self._solve(right.T).T
+        slopes = np.empty_like(values)
+        slopes[:, 1:-1] = inner
+        slopes[:, 0] = (left_end - (h[0] + h[1]) * inner[:, 0]) / h[1]
+        slopes[:, -1] = (right_end - (h[-1] + h[-2]) * inner[:, -1]) / h[-2]
+        return slopes
+
+    def _slope_errors(self, values: Floats, d: Floats, slopes: Floats, relative_error: Floats | float) -> Floats:
+        """Proved bounds on the error of the slopes, (c, n): the residual of the reduced system, with all that rounding can hide
+        in it, through the inverse of the comparison matrix."""
+        h = self.lengths
+        d_error = (np.abs(values[:, :-1]) + np.abs(values[:, 1:])) / h * (relative_error + UNIT) + 3.0 * UNIT * np.abs(d)
+        inner, sizes = slopes[:, 1:-1], np.abs(slopes[:, 1:-1])
         lower, main, upper = self._bands
-        product = main * inner
-        size = main * np.abs(inner)
+        product, size = main * inner, main * sizes
         product[:, 1:] += lower * inner[:, :-1]
-        size[:, 1:] += lower * np.abs(inner[:, :-1])
+        size[:, 1:] += lower * sizes[:, :-1]
         product[:, :-1] += upper * inner[:, 1:]
-        size[:, :-1] += upper * np.abs(inner[:, 1:])
+        size[:, :-1] += upper * sizes[:, 1:]
         in_right, in_left_end, in_right_end = self._magnitudes(np.abs(d), d_error)
-        residual = np.abs(right - product) + 8.0 * UNIT * size + in_right
-        inner_error = self._compared(residual)
-        slopes, errors = np.empty_like(values), np.empty_like(values)
-        slopes[:, 1:-1], errors[:, 1:-1] = inner, inner_error
+        residual = np.abs(self._right_sides(d)[0] - product) + 8.0 * UNIT * size + in_right
+        errors = np.empty_like(values)
+        errors[:, 1:-1] = self._compared(residual)
         near, far = h[0] + h[1], h[-1] + h[-2]
-        slopes[:, 0] = (left_end - near * inner[:, 0]) / h[1]
-        slopes[:, -1] = (right_end - far * inner[:, -1]) / h[-2]
-        errors[:, 0] = (near * (inner_error[:, 0] + 6.0 * UNIT * np.abs(inner[:, 0])) + in_left_end) / h[1]
-        errors[:, -1] = (far * (inner_error[:, -1] + 6.0 * UNIT * np.abs(inner[:, -1])) + in_right_end) / h[-2]
-        return slopes, errors * SAFETY
+        errors[:, 0] = (near * (errors[:, 1] + 6.0 * UNIT * sizes[:, 0]) + in_left_end) / h[1]
+        errors[:, -1] = (far * (errors[:, -2] + 6.0 * UNIT * sizes[:, -1]) + in_right_end) / h[-2]
+        return errors * SAFETY
 
     def _magnitudes(self, d_size: Floats, d_error: Floats) -> tuple[Floats, Floats, Floats]:
         """Bounds on the error of the right sides: every term's size times 14 roundings plus the error of d in it."""
@@ -217,19 +223,23 @@ class Smooth:
             candidate = np.where(short.any(axis=1, keepdims=True), np.broadcast_to(worst, candidate.shape), candidate)
         return np.asarray(candidate)
 
-    def coefficients(self, values: Floats, relative_error: Floats | float) -> Coefficients:
-        """values (c, n). p is the Hermite form of the spline on each interval; q is zero."""
+    def coefficients(self, values: Floats, relative_error: Floats | float | None) -> Coefficients:
+        """values (c, n). p is the Hermite form of the spline on each interval; q is zero. Without a relative_error no bound is
+        worked out, for estimates that need none."""
         rows = values.shape[1]
         if rows == 2:
-            return Linear(self.lengths).coefficients(values, relative_error)
+            return Linear(self.lengths).coefficients(values, 0.0 if relative_error is None else relative_error)
         if rows == 3:
-            return self._parabola(values, relative_error)
-        slopes, slope_errors = self._slopes(values, relative_error)
+            return self._parabola(values, 0.0 if relative_error is None else relative_error)
+        d = np.diff(values, axis=1) / self.lengths
+        slopes = self._slopes(values, d)
         half = self.lengths / 2.0
         members = np.stack([values[:, :-1], values[:, 1:], slopes[:, :-1] * half, slopes[:, 1:] * half], axis=-1)
         p = members @ _HERMITE
-        sizes = np.abs(members)
-        error = (relative_error + 12.0 * UNIT) * sizes.sum(axis=-1)
+        if relative_error is None:
+            return _without_exponent(p, np.zeros((1, len(half))))
+        slope_errors = self._slope_errors(values, d, slopes, relative_error)
+        error = (relative_error + 12.0 * UNIT) * summed(np.abs(members))
         error += _DERIVATIVE_BASIS_PEAK * half * (slope_errors[:, :-1] + slope_errors[:, 1:])
         return _without_exponent(p, error * SAFETY)
 

@@ -19,7 +19,7 @@ import numpy as np
 from .bounded import Bounded
 from .conventions import Conventions
 from .findings import BudgetcheckError
-from .paths import Coefficients, Geometric, Path, Step, path_named
+from .paths import Coefficients, Geometric, Path, Smooth, Step, path_named
 from .quadrature import UNIT, Floats, Mask
 from .rates import ZERO, Rate
 from .rows import Rows
@@ -166,6 +166,7 @@ class _Flows:
         self.amounts = rows.amounts
         self.rates = rows.rates
         self.rate_error = rows.rate_error
+        self.proved = rows.proved
         self.unit = float(conventions.unit)
         self.values = np.stack([amounts.values for amounts in rows.amounts])
         self.error = rows.reading_error
@@ -200,11 +201,16 @@ class _Flows:
         if isinstance(self.path, Geometric):
             rates = path_named("linear", self.path.lengths).coefficients(self.rates[None], self.rate_error)
             return self.path.coefficients(values, error), rates
-        errors = np.full((len(values) + 1, 1), error)
-        errors[-1] = self.rate_error
-        found = self.path.coefficients(np.concatenate([values, self.rates[None]]), errors)
-        amounts = replace(found, p=found.p[:-1], p_error=found.p_error[:-1])
-        return amounts, replace(found, p=found.p[-1:], p_error=found.p_error[-1:])
+        both = np.concatenate([values, self.rates[None]])
+        if isinstance(self.path, Smooth) and not self.proved:
+            found = self.path.coefficients(both, None)
+        else:
+            errors = np.full((len(values) + 1, 1), error)
+            errors[-1] = self.rate_error
+            found = self.path.coefficients(both, errors)
+        p_error = np.broadcast_to(found.p_error, found.p.shape[:2])
+        amounts = replace(found, p=found.p[:-1], p_error=p_error[:-1])
+        return amounts, replace(found, p=found.p[-1:], p_error=p_error[-1:])
 
     def _tail(self) -> Tail | None:
         """The last values go on in continuous data, the last period in totals."""

@@ -27,7 +27,8 @@ class Amounts:
 @dataclass(frozen=True, eq=False)
 class Rows:
     """The rows of a plan as numbers. rates (n,), continuous, within a relative rate_error, with the derivative of each by its
-    printed figure, rate_slopes (n,); reading_error: relative error of every figure against the decimal one."""
+    printed figure, rate_slopes (n,); reading_error: relative error of every figure against the decimal one; proved: False
+    where no bound is wanted, for estimates."""
 
     timeline: Timeline
     amounts: tuple[Amounts, ...]
@@ -36,13 +37,14 @@ class Rows:
     rate_slopes: Floats | None
     rate_half_units: Floats | None
     reading_error: float
+    proved: bool = True
 
     def thinned(self) -> Rows:
         """Every second row, the first and the last kept."""
         kept = every_second(len(self.timeline.times))
         amounts = tuple(replace(a, values=a.values[kept], half_units=None) for a in self.amounts)
         rates = None if self.rates is None else self.rates[kept]
-        return replace(self, timeline=self.timeline.thinned(), amounts=amounts, rates=rates)
+        return replace(self, timeline=self.timeline.thinned(), amounts=amounts, rates=rates, proved=False)
 
 
 def rows_of(ledger: Ledger, compounding: str) -> Rows:

@@ -26,10 +26,13 @@ WINDOW = 0.25
 FEWEST_IN_WINDOW = 5
 MOST_IN_WINDOW = 200
 
+POINTS_PER_WINDOW = 25
+"""Rows taken from each window for the fit, evenly; a row may be taken more than once where there are fewer."""
+
 LARGEST_MISFIT = 0.1
 """A fit leaves at most this share (root mean square) of the movement it describes; otherwise the rows do not settle."""
 
-SPEEDS = np.geomspace(1e-3, 60.0, 40)
+SPEEDS = np.geomspace(1e-3, 60.0, 24)
 """Speeds tried, in units of 1/window: from a straight line to a jump."""
 
 SETTLED = 32.0
@@ -41,7 +44,7 @@ LARGEST_POWER = 100.0
 PIECES = 64
 """Quadrature pieces of a fitted tail."""
 
-REFINED = 13
+REFINED = 17
 """Speeds tried between the neighbours of the best one, in each of two refinements."""
 
 _SERIES = ("income", "consumption", "interest")
@@ -60,13 +63,6 @@ class LastRows:
     def movement(self) -> Floats:
         """How far each series strays from its last value, (3,)."""
         return np.asarray(np.abs(self.values - self.values[:, -1:]).max(axis=1))
-
-    def part(self, start: float, end: float) -> LastRows:
-        """The rows from start to end, shares of the window, with s relative to the last of them."""
-        window = -self.s[0]
-        kept = (self.s >= (start - 1.0) * window - 1e-9) & (self.s <= (end - 1.0) * window + 1e-9)
-        s = self.s[kept]
-        return LastRows(s=s - s[-1], values=self.values[:, kept], noise=self.noise)
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -161,73 +157,102 @@ def _noise(values: Floats, half_units: Floats | None, kept: NDArray[np.intp]) ->
     return floor if half_units is None else max(floor, 2.0 * float(np.median(half_units[kept])))
 
 
-def exponential(rows: LastRows, moving: Mask) -> Curves | None:
-    """Least squares through the last row, each series with its own speed; None where one that moves follows no decaying
-    curve."""
-    found = _speeds(rows, moving)
-    if found is None:
-        return None
-    speeds, departures = found
-    last = rows.values[:, -1]
-    return Curves(
-        **{
-            name: Curve(long_run=float(last[k] - departures[k]), departure=float(departures[k]), speed=float(speeds[k]))
-            for k, name in enumerate(_SERIES)
-        }
+@dataclass(frozen=True, eq=False)
+class Fits:
+    """Exponential curves through the last row of three windows: the whole one, its first half and its second half.
+
+    speeds, departures (3, 3): by window and series, 1 and 0 for a series that does not move; sound (3,): whether every series
+    that moves follows its curve; last (3,): the values of the last row; half: years from the middle of one half to that of
+    the other; moving (3,).
+    """
+
+    speeds: Floats
+    departures: Floats
+    sound: Mask
+    last: Floats
+    half: float
+    moving: Mask
+
+
+def fit(rows: LastRows, moving: Mask) -> Fits:
+    """Least squares, each series with its own speed, through the last row of each window, at POINTS_PER_WINDOW rows of it."""
+    s, values = _windows(rows)
+    deviation = (values - values[..., -1:])[:, moving]
+    count = deviation.shape[1]
+    # the windows' series side by side: (3·count, j)
+    deviation = deviation.reshape(3 * count, -1)
+    s = np.repeat(s, count, axis=0)
+    speed, departure, sound = _least_squares(deviation, s)
+    speeds, departures = np.ones((3, 3)), np.zeros((3, 3))
+    speeds[:, moving], departures[:, moving] = speed.reshape(3, count), departure.reshape(3, count)
+    return Fits(
+        speeds=speeds,
+        departures=departures,
+        sound=np.asarray(sound.reshape(3, count).all(axis=1)),
+        last=rows.values[:, -1],
+        half=-0.5 * float(rows.s[0]),
+        moving=moving,
     )
 
 
-def _speeds(rows: LastRows, moving: Mask) -> tuple[Floats, Floats] | None:
-    """Speeds and departures of the three series, both (3,); 1 and 0 for a series that does not move."""
-    window = -float(rows.s[0])
-    deviation = (rows.values - rows.values[:, -1:])[moving]
-    if len(rows.s) < 3 or not np.abs(deviation).max(axis=1, initial=0.0).all():
-        return None
-    speeds = np.repeat((SPEEDS / window)[:, None], len(deviation), axis=1)
+def _windows(rows: LastRows) -> tuple[Floats, Floats]:
+    """s (3, j), relative to the last row of each window, and values (3, 3, j), by window, at evenly chosen rows of each."""
+    middle = int(np.searchsorted(rows.s, 0.5 * rows.s[0]))
+    end = len(rows.s) - 1
+    chosen = np.linspace((0, 0, middle), (end, middle, end), POINTS_PER_WINDOW, axis=1).round().astype(int)
+    s = rows.s[chosen]
+    return s - s[:, -1:], np.moveaxis(rows.values[:, chosen], 0, 1)
+
+
+def _least_squares(deviation: Floats, s: Floats) -> tuple[Floats, Floats, Mask]:
+    """For each of k series (k, j), speed and departure d of deviation ≈ d·(e^{−speed·s} − 1), and whether it follows them."""
+    slowest = SPEEDS[0] / -s[:, 0]
+    speeds = SPEEDS[:, None] / -s[:, 0]
     series = np.arange(len(deviation))
+    squares = np.einsum("kj,kj->k", deviation, deviation)
     for _ in range(3):
-        misfit, slopes = _misfit(deviation, rows.s, speeds)
-        best = np.argmin(misfit, axis=0)
-        found, departure, left = speeds[best, series], slopes[best, series], misfit[best, series]
+        shape = np.expm1(-speeds[:, :, None] * s)
+        norms = np.einsum("gkj,gkj->gk", shape, shape)
+        products = np.einsum("gkj,kj->gk", shape, deviation)
+        explained = products**2 / norms
+        best = np.argmax(explained, axis=0)
+        speed, departure, left = speeds[best, series], (products / norms)[best, series], squares - explained[best, series]
         low, high = speeds[np.maximum(best - 1, 0), series], speeds[np.minimum(best + 1, len(speeds) - 1), series]
         speeds = np.linspace(low, high, REFINED)
-    straight = found <= 1.0001 * SPEEDS[0] / window
-    if straight.any() or (left > LARGEST_MISFIT**2 * (deviation**2).sum(axis=1)).any():
+    follows = (squares > 0.0) & (left <= LARGEST_MISFIT**2 * squares)
+    return speed, departure, follows & (speed > 1.0001 * slowest)
+
+
+def exponential(fits: Fits) -> Curves | None:
+    """The exponential curves of the whole window; None where a series that moves follows no decaying one."""
+    if not fits.sound[0]:
         return None
-    all_speeds, departures = np.ones(3), np.zeros(3)
-    all_speeds[moving], departures[moving] = found, departure
-    return all_speeds, departures
+    departures, speeds = fits.departures[0], fits.speeds[0]
+    curves = {
+        name: Curve(long_run=float(last - departure), departure=float(departure), speed=float(speed))
+        for name, last, departure, speed in zip(_SERIES, fits.last, departures, speeds, strict=True)
+    }
+    return Curves(**curves)
 
 
-def _misfit(deviation: Floats, s: Floats, speeds: Floats) -> tuple[Floats, Floats]:
-    """For each speed (g, k) of each series (k, j), the sum of squares left and the best departure d of
-    deviation ≈ d·(e^{−speed·s} − 1), both (g, k)."""
-    shape = np.expm1(-speeds[:, :, None] * s)
-    squares = np.einsum("gkj,gkj->gk", shape, shape)
-    products = np.einsum("gkj,kj->gk", shape, deviation)
-    return np.einsum("kj,kj->k", deviation, deviation) - products**2 / squares, products / squares
-
-
-def slowing(rows: LastRows, moving: Mask) -> Curves | None:
+def slowing(fits: Fits) -> Curves | None:
     """Algebraic curves for the series whose speed falls from the first half of the window to the second, exponential ones for
     the others; None where none falls, or the halves cannot tell. A series that settles nowhere (p ≤ 0) departs infinitely."""
-    window = -float(rows.s[0])
-    first, second = _speeds(rows.part(0.0, 0.5), moving), _speeds(rows.part(0.5, 1.0), moving)
-    if first is None or second is None:
+    if not fits.sound[1:].all():
         return None
-    before, (after, departures) = first[0], second
+    before, after = fits.speeds[1], fits.speeds[2]
     # 1/speed = (σ + s)/(p + 1) grows in a straight line, known in the middle of each half
-    growth = (1.0 / after - 1.0 / before) / (0.5 * window)
-    falling = moving & (growth * (LARGEST_POWER + 1.0) > 1.0)
+    growth = (1.0 / after - 1.0 / before) / fits.half
+    falling = fits.moving & (growth * (LARGEST_POWER + 1.0) > 1.0)
     if not falling.any():
         return None
     curves = {}
     for k, name in enumerate(_SERIES):
-        last, departure, speed, power = float(rows.values[k, -1]), float(departures[k]), float(after[k]), math.inf
+        last, departure, speed, power = float(fits.last[k]), float(fits.departures[2, k]), float(after[k]), math.inf
         if falling[k]:
             power = 1.0 / float(growth[k]) - 1.0
             slope = departure * speed
-            speed = 1.0 / (1.0 / speed + float(growth[k]) * 0.25 * window)
+            speed = 1.0 / (1.0 / speed + float(growth[k]) * 0.5 * fits.half)
             # the slope at the last row is d·p/σ = d·p·speed/(p + 1)
             departure = slope * (power + 1.0) / (power * speed) if power > 0.0 else math.copysign(math.inf, departure)
         curves[name] = Curve(long_run=last - departure, departure=departure, speed=speed, power=power)
