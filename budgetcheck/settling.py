@@ -206,13 +206,14 @@ def _windows(rows: LastRows) -> tuple[Floats, Floats]:
 
 def _least_squares(deviation: Floats, s: Floats) -> tuple[Floats, Floats, Mask]:
     """For each of k series (k, j), speed and departure d of deviation ≈ d·(e^{−speed·s} − 1), and whether it follows them."""
-    slowest = SPEEDS[0] / -s[:, 0]
-    speeds = SPEEDS[:, None] / -s[:, 0]
+    # a half window may hold no more than its last row
+    span = np.where(s[:, 0] < 0.0, -s[:, 0], 1.0)
+    speeds = SPEEDS[:, None] / span
     series = np.arange(len(deviation))
     squares = np.einsum("kj,kj->k", deviation, deviation)
     for _ in range(3):
         shape = np.expm1(-speeds[:, :, None] * s)
-        norms = np.einsum("gkj,gkj->gk", shape, shape)
+        norms = np.maximum(np.einsum("gkj,gkj->gk", shape, shape), np.finfo(float).tiny)
         products = np.einsum("gkj,kj->gk", shape, deviation)
         explained = products**2 / norms
         best = np.argmax(explained, axis=0)
@@ -220,7 +221,7 @@ def _least_squares(deviation: Floats, s: Floats) -> tuple[Floats, Floats, Mask]:
         low, high = speeds[np.maximum(best - 1, 0), series], speeds[np.minimum(best + 1, len(speeds) - 1), series]
         speeds = np.linspace(low, high, REFINED)
     follows = (squares > 0.0) & (left <= LARGEST_MISFIT**2 * squares)
-    return speed, departure, follows & (speed > 1.0001 * slowest)
+    return speed, departure, follows & (s[:, 0] < 0.0) & (speed > 1.0001 * SPEEDS[0] / span)
 
 
 def exponential(fits: Fits) -> Curves | None:

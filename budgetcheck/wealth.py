@@ -88,6 +88,7 @@ class _Course:
         return np.asarray(self.factor * np.exp(polynomial(self.exponent.coefficients[interval], z)) * d)
 
     def time(self, interval: int, z: float) -> float:
+        """The date of a point of an interval, years since the start."""
         return float(self.breaks[interval] + self.lengths[interval] * (1.0 + z) / 2.0)
 
     def lowest(self) -> Extreme:
