@@ -662,3 +662,15 @@ terminal_wealth = 1
     found = report["slack"]["per_effective_unit"]
     assert_equal(Bounded(found["value"], found["bound"]), str(Decimal(slack) - Decimal(last)))
     assert (report["verdict"], report["error"]["reconstruction"]) == ("PASS", 0.0)
+
+
+def test_a_hundred_thousand_rows_lose_nothing() -> None:
+    """(1 − e^(−rT))/r over 100,000 rows of a column r (compound interest, closed form): running sums do not drift."""
+    t = np.arange(100_001) / 1000
+    table = incomes(np.ones_like(t), t, r=np.full_like(t, 0.03))
+    found = assess(table, continuous(None, "linear"))
+    # e^(−3) = 0.049787068367863944 (from memory, any table of exponentials)
+    expected = (1 - 0.049787068367863944) / 0.03
+    assert income(found).bound < 1e-12 * expected
+    # the figures are the binary numbers nearest to 0.03 and to multiples of 0.001, each off by up to 2**-53 of itself
+    assert abs(income(found).value - expected) <= income(found).bound + 4 * 2.0**-53 * expected

@@ -233,10 +233,15 @@ def _basis(a: Assessment, full: bool) -> Iterator[tuple[str, str]]:
     for name, value, why in kinds:
         if value or full:
             yield name, f"{error(value)} per unit of human capital{why}"
+    fit = a.tail.estimate.fit
+    if full and fit is not None:
+        for name, curve in vars(fit).items():
+            settles = f"settles at {significant(curve.long_run)}, at a speed of {significant(curve.speed, 3)} a year"
+            yield f"Fitted tail: {name}", settles if curve.departure else f"stays at {significant(curve.long_run)}"
     if a.error.input_rounding is not None:
         yield "Rounding of printed figures", f"{error(a.error.input_rounding)} per unit at the most; not in the verdict"
-    if full:
-        yield "Two routes differ by", f"{a.routes_differ.value:.2g}, proved {error(a.routes_differ.bound)}"
+    difference = significant(a.routes_differ.value, 2)
+    yield "Two routes to slack differ by", f"{difference} per unit; at most {a.routes_differ.bound:.2g} is proved"
 
 
 def _assumptions(entries: Iterable[Assumption]) -> Iterator[tuple[str, str]]:
