@@ -18,6 +18,7 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 import numpy as np
+from numpy.polynomial.legendre import legvander
 from numpy.typing import NDArray
 
 Floats = NDArray[np.float64]
@@ -157,19 +158,21 @@ def integrate(p: Floats, q: Floats, lengths: Floats, *, p_error: Floats, q_error
     )
 
 
-def _antiderivative() -> Floats:
-    """B with ∫_{−1}^{z_j} f ≈ Σ_k B[j, k] f(z_k): the interpolant at the nodes, integrated exactly (Legendre series)."""
-    from numpy.polynomial.legendre import legvander
+_SERIES: Floats = (np.arange(POINTS) + 0.5)[:, None] * legvander(NODES, POINTS - 1).T * WEIGHTS
+"""From the values of f at the nodes to the Legendre series of its interpolant, (16, 16)."""
 
-    values = legvander(NODES, POINTS)
-    integral = np.empty((POINTS, POINTS))
-    integral[:, 0] = 1.0 + NODES
+
+def antiderivative_at(z: Floats) -> Floats:
+    """B (i, 16) with ∫_{−1}^{z_i} f ≈ Σ_k B[i, k] f(node k): the interpolant at the nodes, integrated exactly."""
+    values = legvander(z, POINTS)
+    integral = np.empty((len(z), POINTS))
+    integral[:, 0] = 1.0 + z
+    # ∫_{−1}^z P_n = (P_{n+1} − P_{n−1})/(2n + 1)
     integral[:, 1:] = (values[:, 2:] - values[:, : POINTS - 1]) / (2.0 * np.arange(1, POINTS) + 1.0)
-    series = (np.arange(POINTS) + 0.5)[:, None] * values[:, :POINTS].T * WEIGHTS
-    return np.asarray(integral @ series)
+    return np.asarray(integral @ _SERIES)
 
 
-ANTIDERIVATIVE: Floats = _antiderivative()
+ANTIDERIVATIVE: Floats = antiderivative_at(NODES)
 
 
 def running_sum(terms: Floats) -> tuple[Floats, Floats]:

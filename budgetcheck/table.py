@@ -193,8 +193,11 @@ def from_frame(frame: pd.DataFrame) -> Table:
 
 
 def _frame_column(header: str, series: pd.Series[Any]) -> Column:
-    if series.dtype.kind in "iuf" and not series.hasnans:
-        return Column(header=header.strip(), cells=None, numbers=series.to_numpy(dtype=np.float64))
+    values = series.to_numpy()
+    if values.dtype.kind in "iuf":
+        numbers = values.astype(np.float64)
+        if not np.isnan(numbers).any():
+            return Column(header=header.strip(), cells=None, numbers=numbers)
     cells = series.tolist()
     if all(isinstance(cell, (int, float, Decimal)) and not isinstance(cell, bool) for cell in cells) and not series.hasnans:
         return Column(header=header.strip(), cells=None, numbers=np.array([_as_float(cell) for cell in cells]))

@@ -15,11 +15,11 @@ import numpy as np
 
 from .budget import Budget, Reach
 from .plan import LARGEST_EXPONENT, OutOfRange
-from .quadrature import ANTIDERIVATIVE, NODES, POINTS, WEIGHTS, Floats, at_nodes, polynomial, running_sum
+from .quadrature import ANTIDERIVATIVE, NODES, POINTS, Floats, antiderivative_at, at_nodes, polynomial, running_sum
 from .streams import Exponent
 
 _SEARCH_POINTS = 65
-_SEARCH_ROUNDS = 2
+"""Points between two neighbouring nodes at which a minimum or a crossing is looked for."""
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -73,16 +73,8 @@ class _Course:
         return self.factor * np.exp(self.exponent.at), self.factor * np.exp(at_nodes(self.exponent.coefficients))
 
     def inside(self, interval: int, z: Floats) -> Floats:
-        """e^E·D at points z of one interval."""
-        from numpy.polynomial.legendre import legvander
-
-        values = legvander(NODES, POINTS - 1)
-        series = (np.arange(POINTS) + 0.5) * ((WEIGHTS * self.net[interval]) @ values)
-        at = legvander(z, POINTS)
-        integral = np.empty((len(z), POINTS))
-        integral[:, 0] = 1.0 + z
-        integral[:, 1:] = (at[:, 2:] - at[:, : POINTS - 1]) / (2.0 * np.arange(1, POINTS) + 1.0)
-        d = self.after[interval] + self.lengths[interval] / 2.0 * (integral @ series)
+        """factor·e^E·D at points z of one interval."""
+        d = self.after[interval] + self.lengths[interval] / 2.0 * (antiderivative_at(z) @ self.net[interval])
         if self.exponent is None:
             return np.asarray(self.factor * d)
         return np.asarray(self.factor * np.exp(polynomial(self.exponent.coefficients[interval], z)) * d)
@@ -108,17 +100,17 @@ class _Course:
         return Extreme(t=self.time(i, z), value=value, error=float(inside[i, j]) * self.error)
 
     def _descend(self, interval: int, left: float, right: float) -> tuple[float, float]:
-        """Narrow a bracket of the minimum twice, then take the vertex of the parabola through the last three points."""
-        for _ in range(_SEARCH_ROUNDS):
-            z = np.linspace(left, right, _SEARCH_POINTS)
-            values = self.inside(interval, z)
-            best = min(max(int(np.argmin(values)), 1), _SEARCH_POINTS - 2)
-            left, right = float(z[best - 1]), float(z[best + 1])
-        low, middle, high = values[best - 1 : best + 2]
+        """The vertex of the parabola through the three lowest of many points between left and right."""
+        z = np.linspace(left, right, _SEARCH_POINTS)
+        values = self.inside(interval, z)
+        best = min(max(int(np.argmin(values)), 1), _SEARCH_POINTS - 2)
+        low, middle, high = values[best - 1 : best + 2].tolist()
         bend = low - 2.0 * middle + high
         shift = 0.5 * (low - high) / bend if bend > 0.0 else 0.0
         lowered = middle - 0.125 * (low - high) ** 2 / bend if bend > 0.0 else middle
-        return float(z[best] + np.clip(shift, -1.0, 1.0) * (z[1] - z[0])), float(min(lowered, low, middle, high))
+        if abs(shift) > 1.0:
+            shift, lowered = 0.0, middle
+        return float(z[best] + shift * (z[1] - z[0])), float(min(lowered, low, middle, high))
 
     def first_below(self) -> float | None:
         """The first date at which the course is below zero by more than its error."""
@@ -134,14 +126,14 @@ class _Course:
         z = np.concatenate([[-1.0], NODES, [1.0]])
         low = np.concatenate([[False], below_nodes[i], [below_before[i + 1]]])
         j = int(np.argmax(low))
-        left, right = float(z[j - 1]), float(z[j])
-        for _ in range(_SEARCH_ROUNDS):
-            points = np.linspace(left, right, _SEARCH_POINTS)
-            negative = self.inside(i, points) < 0.0
-            negative[-1] = True
-            j = int(np.argmax(negative))
-            left, right = float(points[max(j - 1, 0)]), float(points[j])
-        return self.time(i, right)
+        points = np.linspace(z[j - 1], z[j], _SEARCH_POINTS)
+        values = self.inside(i, points)
+        values[-1] = min(values[-1], 0.0)
+        j = max(int(np.argmax(values <= 0.0)), 1)
+        # a straight line between two points so close finds the date to far better than a day
+        before, after = max(float(values[j - 1]), 0.0), float(values[j])
+        share = before / (before - after) if before > after else 1.0
+        return self.time(i, float(points[j - 1] + share * (points[j] - points[j - 1])))
 
 
 def wealth_path(budget: Budget, reconstruction: float) -> WealthPath:
