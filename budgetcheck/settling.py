@@ -47,6 +47,8 @@ PIECES = 64
 REFINED = 17
 """Speeds tried between the neighbours of the best one, in each of two refinements."""
 
+_BETWEEN = np.linspace(0.0, 1.0, REFINED)[:, None]
+
 _SERIES = ("income", "consumption", "interest")
 
 
@@ -219,7 +221,7 @@ def _least_squares(deviation: Floats, s: Floats) -> tuple[Floats, Floats, Mask]:
         best = np.argmax(explained, axis=0)
         speed, departure, left = speeds[best, series], (products / norms)[best, series], squares - explained[best, series]
         low, high = speeds[np.maximum(best - 1, 0), series], speeds[np.minimum(best + 1, len(speeds) - 1), series]
-        speeds = np.linspace(low, high, REFINED)
+        speeds = low + (high - low) * _BETWEEN
     follows = (squares > 0.0) & (left <= LARGEST_MISFIT**2 * squares)
     return speed, departure, follows & (s[:, 0] < 0.0) & (speed > 1.0001 * SPEEDS[0] / span)
 

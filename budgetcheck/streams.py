@@ -32,6 +32,8 @@ class Mesh:
     @property
     def row_starts(self) -> NDArray[np.intp]:
         """The first piece of each interval between rows."""
+        if self.halvings == 0:
+            return self.interval
         return np.flatnonzero(np.diff(self.interval, prepend=-1))
 
     def split(self, mask: Mask) -> Mesh:
