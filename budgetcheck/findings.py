@@ -34,12 +34,12 @@ class Finding:
 
     @property
     def place(self) -> str:
-        """Where it is, as 'plan.csv, line 7, column wage'; empty where there is no place."""
+        """Where it is, as 'plan.csv, line 7, column wage' or 'plan.toml, line 3, key r'; empty where there is no place."""
         parts = [] if self.file is None else [visible(self.file)]
         if self.row is not None:
             parts.append(f"line {self.row}")
         if self.column is not None:
-            parts.append(f"column {quoted(self.column)}")
+            parts.append(f"{'key' if (self.file or '').endswith('.toml') else 'column'} {quoted(self.column)}")
         return ", ".join(parts)
 
     @property

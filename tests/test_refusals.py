@@ -155,7 +155,7 @@ def test_an_assumptions_file_that_is_no_toml_does_not_hide_bad_cells(tmp_path: P
 def test_a_missing_table_does_not_hide_faults_of_the_assumptions(tmp_path: Path) -> None:
     """The name is wrong and so is a key: both are told."""
     (tmp_path / "own.toml").write_text("[market]\nrate = 0.03\n")
-    with pytest.raises(InputRefused, match=r"no such file(?s:.*)column 'rate'"):
+    with pytest.raises(InputRefused, match=r"no such file(?s:.*)key 'rate'"):
         assess(tmp_path / "absent.csv", tmp_path / "own.toml")
 
 
