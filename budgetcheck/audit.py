@@ -12,6 +12,7 @@ import numpy as np
 
 from .assumptions import Assumptions
 from .findings import Finding, note, rest, stop, warn
+from .keys import FLOW_ROLES
 from .ledger import Ledger, LedgerColumn
 from .rates import CONVERSIONS
 from .text import quoted
@@ -52,18 +53,19 @@ def _sign(ledger: Ledger, _: Assumptions) -> Iterator[Finding]:
         wrong = column.values < 0
         hint = "write consumption as positive amounts." if wrong.all() else "write the amount consumed, 0 or more."
         yield from _cells(ledger, column, wrong, "sign", "consumption is negative;", hint)
-    for column in ledger.of_role("income"):
+    for column in (*ledger.of_role("income"), *ledger.of_role("deduction")):
         negative = np.flatnonzero(column.values < 0)
         if len(negative):
             first = ledger.lines[negative[0]]
-            message = f"income is negative in {len(negative)} rows, first in line {first}; is an outflow meant?"
+            meant = "an outflow" if column.role == "income" else "a refund, or a sign that says 'taken off' twice,"
+            message = f"{column.role} is negative in {len(negative)} rows, first in line {first}; is {meant} meant?"
             yield warn("sign", message, file=ledger.file, row=first, column=column.header)
 
 
 def _geometric(ledger: Ledger, assumptions: Assumptions) -> Iterator[Finding]:
     """A path that is linear in logarithms has no zero."""
     if assumptions.word("amounts.path") == "geometric":
-        for column in (*ledger.of_role("income"), *ledger.of_role("consumption")):
+        for column in (column for role in FLOW_ROLES for column in ledger.of_role(role)):
             message = "a geometric path needs amounts above zero;"
             wrong = column.values <= 0
             yield from _cells(ledger, column, wrong, "assumption", message, 'declare another path, such as "linear".')
@@ -71,22 +73,33 @@ def _geometric(ledger: Ledger, assumptions: Assumptions) -> Iterator[Finding]:
 
 def _rate_cells(ledger: Ledger, assumptions: Assumptions) -> Iterator[Finding]:
     """A rate that loses everything, or a hundredfold gain in a year, is no rate."""
-    conversions = CONVERSIONS.get(assumptions.word("market.compounding") or "", 1)
-    for column in ledger.of_role("r"):
-        wrong = (column.values <= -conversions) | (column.values < -1) | (column.values > 100)
-        yield from _cells(ledger, column, wrong, "rate-scale", "is no interest rate;", "write a fraction: 0.05 for 5 %.")
+    market = assumptions.word("market.compounding") or ""
+    growth = assumptions.word("growth.compounding") or market
+    columns = [(column, market) for role in ("r", "inflation") for column in ledger.of_role(role)]
+    columns += [(column, growth) for role in ("g", "n") for column in ledger.of_role(role)]
+    for column, compounding in columns:
+        wrong = (column.values <= -CONVERSIONS.get(compounding, 1)) | (column.values < -1) | (column.values > 100)
+        what = "is no interest rate;" if column.role == "r" else "is no rate a year;"
+        yield from _cells(ledger, column, wrong, "rate-scale", what, "write a fraction: 0.05 for 5 %.")
 
 
 def _percent(ledger: Ledger, assumptions: Assumptions) -> Iterator[Finding]:
     """A rate that looks like a percentage."""
-    for column in ledger.of_role("r"):
-        large = np.flatnonzero(np.abs(column.values) >= LIKELY_PERCENT)
-        if len(large):
-            value, row = column.values[large[0]], ledger.lines[large[0]]
-            message = f"r is {value:g} in {len(large)} rows, first here: {100 * value:g} % a year. {_FRACTION}"
-            yield warn("rate-scale", message, file=ledger.file, row=row, column=column.header)
+    for role, limit in (
+        ("r", LIKELY_PERCENT),
+        ("inflation", LIKELY_PERCENT),
+        ("g", LIKELY_PERCENT_GROWTH),
+        ("n", LIKELY_PERCENT_GROWTH),
+    ):
+        for column in ledger.of_role(role):
+            large = np.flatnonzero(np.abs(column.values) >= limit)
+            if len(large):
+                value, row = column.values[large[0]], ledger.lines[large[0]]
+                message = f"{role} is {value:g} in {len(large)} rows, first here: {100 * value:g} % a year. {_FRACTION}"
+                yield warn("rate-scale", message, file=ledger.file, row=row, column=column.header)
     for path, limit in (
         ("market.r", LIKELY_PERCENT),
+        ("market.inflation", LIKELY_PERCENT),
         ("growth.g", LIKELY_PERCENT_GROWTH),
         ("growth.n", LIKELY_PERCENT_GROWTH),
     ):
@@ -116,24 +129,37 @@ def _horizon(_: Ledger, assumptions: Assumptions) -> Iterator[Finding]:
         yield warn("horizon-cut", message, file=assumptions.file)
 
 
-def _keys_without_effect(_: Ledger, assumptions: Assumptions) -> Iterator[Finding]:
-    """A declaration that another one makes void is a contradiction to be settled by its author."""
-    growing = assumptions.word("horizon.tail") == "growing"
-    perpetual = assumptions.word("horizon.kind") == "perpetual"
-    for key in ("horizon.income_growth", "horizon.consumption_growth"):
-        stated = assumptions.stated(key)
-        if stated is not None and not growing:
-            yield stop("assumption", f'{key} needs tail = "growing".', file=assumptions.file, row=stated.row, column=key)
-        elif stated is None and growing and key not in assumptions.attempted:
-            yield stop("assumption", f'tail = "growing" needs {key}.', file=assumptions.file, column=key)
-    tail = assumptions.stated("horizon.tail")
-    if tail is not None and not perpetual:
-        yield stop("assumption", 'a tail needs kind = "perpetual".', file=assumptions.file, row=tail.row, column="tail")
-    for key in ("preferences.rho", "preferences.theta"):
-        stated = assumptions.stated(key)
-        if stated is not None:
-            message = f"{key} does not enter the verdict: the plan is discounted with the market interest rate."
-            yield note("preferences", message, file=assumptions.file, row=stated.row, column=key)
+def _preferences(_: Ledger, assumptions: Assumptions) -> Iterator[Finding]:
+    """The subjective discount rate is no interest rate, and conditions on preferences take both of their figures."""
+    stated = [assumptions.stated(key) for key in ("preferences.rho", "preferences.theta")]
+    if stated[0] is not None and stated[1] is not None:
+        return
+    for entry in stated:
+        if entry is not None:
+            other = "theta" if entry.key.endswith("rho") else "rho"
+            message = (
+                f"{entry.key} does not enter the verdict: the plan is discounted with the market interest rate; conditions on "
+                f"preferences need preferences.{other} too."
+            )
+            yield note("preferences", message, file=assumptions.file, row=entry.row, column=entry.key)
 
 
-RULES: tuple[Rule, ...] = (_sign, _geometric, _rate_cells, _percent, _horizon, _keys_without_effect)
+def _heads(ledger: Ledger, _: Assumptions) -> Iterator[Finding]:
+    """People cannot be fewer than none, nor a household without an adult, nor a level of productivity or survival zero."""
+    for role, low, inclusive, message, hint in (
+        ("members", 0.0, False, "a household has no members;", "write how many persons it has, more than 0."),
+        ("productivity", 0.0, False, "an index of productivity is zero or negative;", "write a positive index."),
+        ("adults", 1.0, True, "a household has no adult;", "equivalence scales count from one adult."),
+        ("children", 0.0, True, "a number of children is negative;", "write 0 or more."),
+        ("survival", 0.0, False, "nobody is left alive;", "end the plan before survival is zero."),
+        ("hazard", 0.0, True, "a force of mortality is negative;", "write deaths per person and year, 0 or more."),
+    ):
+        for column in ledger.of_role(role):
+            wrong = column.values < low if inclusive else column.values <= low
+            yield from _cells(ledger, column, wrong, "head-count", message, hint)
+    for column in ledger.of_role("survival"):
+        rises = np.concatenate([[False], np.diff(column.values) > 0.0])
+        yield from _cells(ledger, column, rises, "head-count", "survival rises;", "write the share still alive at each date.")
+
+
+RULES: tuple[Rule, ...] = (_sign, _geometric, _rate_cells, _percent, _heads, _horizon, _preferences)

@@ -18,11 +18,14 @@ import math
 from dataclasses import dataclass
 from enum import StrEnum
 
+import numpy as np
+
 from .bounded import ZERO, Bounded, total
+from .exponents import Exponent, Mesh
 from .plan import LARGEST_EXPONENT, OutOfRange, Plan
 from .quadrature import EXP_ERROR, MOST_HALVINGS, SAFETY, UNIT, Floats, Integral
 from .rates import Rate
-from .streams import Exponent, Mesh, Streams
+from .streams import Streams
 
 NEAR_TIE = 10.0
 """A decay of fewer than this many times its own rounding is not told from a tie: its reciprocal would mean nothing."""
@@ -36,7 +39,7 @@ class Reach(StrEnum):
     UNKNOWN = "unknown"
 
 
-@dataclass(frozen=True, kw_only=True)
+@dataclass(frozen=True, kw_only=True, eq=False)
 class PresentValue:
     """Of one column, or of all of one role: the part of the rows, the part of the tail (zero unless finite), and whether the
     whole is finite."""
@@ -46,6 +49,11 @@ class PresentValue:
     rows: Bounded
     tail: Bounded
     reach: Reach
+
+    @property
+    def side(self) -> str:
+        """The side of the account it belongs to."""
+        return "consumption" if self.role == "consumption" else "income"
 
     @property
     def whole(self) -> Bounded:
@@ -63,7 +71,7 @@ class PresentValue:
         return self.whole.bound if self.reach is Reach.FINITE else None
 
 
-@dataclass(frozen=True, kw_only=True)
+@dataclass(frozen=True, kw_only=True, eq=False)
 class Account:
     """The lifetime account in one unit: initial wealth, present values by column and by role, the discounted terminal
     requirement (terminal_wealth), and slack, with all tails that are finite or, rows_slack, without tails."""
@@ -119,38 +127,28 @@ def slack_only(plan: Plan) -> Account:
 
 def per_household(plan: Plan) -> Route:
     """Equation (1): household money discounted with e^{−R}."""
-    interest = discount(plan, Rate())
-    streams = plan.streams.restated(interest, sign=-1)
-    return _route(plan, streams, interest, plan.wealth, _required(plan, interest, ()))
+    interest = plan.discount_exponent
+    return _route(plan, plan.streams.restated(interest, sign=-1), interest, plan.wealth, _required(plan, (interest,)))
 
 
 def per_unit(plan: Plan) -> Route:
     """Equation (2): streams restated per unit of human capital, then discounted with e^{−Λ}."""
-    growth, net = plan.growth_exponent, discount(plan, plan.growth)
+    growth, net = plan.growth_exponent, plan.net_exponent
     factor = plan.scale.reciprocal()
     relative = factor.bound / factor.value
-    streams = plan.streams.restated(growth, sign=-1, factor=factor).restated(net, sign=-1)
-    required = _required(plan, net, (growth,)).times(factor.value, relative)
-    return _route(plan, streams, net, plan.wealth.times(factor.value, relative), required)
+    own = plan.streams.times([factor] * len(plan.items)).restated(growth, sign=-1)
+    required = _required(plan, (net, growth)).times(factor.value, relative)
+    return _route(plan, own.restated(net, sign=-1), net, plan.wealth.times(factor.value, relative), required)
 
 
-def discount(plan: Plan, less: Rate) -> Exponent | None:
-    """∫(r − less): the exponent that discounts; for declared rates the difference is exact, and None where it is zero."""
-    if plan.rows.rates is None:
-        return Exponent.constant(plan.interest.beyond - less, plan.mesh)
-    path = plan.interest.less(less) if less.sign != 0 else plan.interest
-    return Exponent.of(path, plan.mesh.lengths)
-
-
-def _required(plan: Plan, net: Exponent | None, less: tuple[Exponent | None, ...]) -> Bounded:
+def _required(plan: Plan, less: tuple[Exponent | None, ...]) -> Bounded:
     """The terminal requirement in household money, discounted; exponents are added before anything can overflow."""
-    if plan.terminal.value == 0.0:
+    if plan.terminal.value == 0.0 or plan.conventions.perpetual:
         return ZERO
-    grown = Exponent.constant(plan.terminal_growth, plan.mesh)
-    signed = [(1.0, grown), (-1.0, net), *((-1.0, other) for other in less)]
+    signed = [(1.0, plan.requirement.exponent(plan.mesh)), *((-1.0, other) for other in less)]
     present = [(sign, exponent) for sign, exponent in signed if exponent is not None]
-    exponent = sum(sign * float(e.at[-1]) for sign, e in present)
-    error = sum(float(e.at_error[-1]) + 2.0 * UNIT * abs(float(e.at[-1])) for _, e in present)
+    exponent = sum(sign * float(e.before[-1]) for sign, e in present)
+    error = sum(float(e.at_error[-1]) + 2.0 * UNIT * abs(float(e.before[-1])) for _, e in present)
     if abs(exponent) > LARGEST_EXPONENT:
         raise OutOfRange(_beyond(abs(exponent)))
     return plan.terminal.times(math.exp(exponent), 1.01 * error + EXP_ERROR)
@@ -175,13 +173,20 @@ def _route(plan: Plan, streams: Streams, discount: Exponent | None, wealth: Boun
 def _account(plan: Plan, streams: Streams, integral: Integral, wealth: Bounded, terminal: Bounded) -> Account:
     lumps = None if streams.lumps is None else streams.lumps.values()
     tails = tail_values(streams, plan, integral, lumps)
+    # pieces of an extended tail follow those of the rows
+    end = int(np.searchsorted(plan.mesh.interval, plan.row_intervals))
+    extended = end < len(plan.mesh.interval)
     lines = []
-    for k, amounts in enumerate(plan.rows.amounts):
-        rows = total(integral.value[k], integral.bound[k])
-        if lumps is not None:
-            rows = rows + total(lumps[0][k], lumps[1][k])
+    for k, item in enumerate(plan.items):
+        rows = total(integral.value[k, :end], integral.bound[k, :end])
         tail, reach = tails[k]
-        lines.append(PresentValue(name=amounts.name, role=amounts.role, rows=rows, tail=tail, reach=reach))
+        if lumps is not None:
+            rows = rows + _paid(streams, lumps, k, end, rows=True)
+        if extended:
+            tail = tail + total(integral.value[k, end:], integral.bound[k, end:])
+            if lumps is not None:
+                tail = tail + _paid(streams, lumps, k, end, rows=False)
+        lines.append(PresentValue(name=item.name, role=item.role, rows=rows, tail=tail, reach=reach))
     income, consumption = _sum("income", lines), _sum("consumption", lines)
     rows_slack = wealth + income.rows - consumption.rows - terminal
     return Account(
@@ -195,15 +200,25 @@ def _account(plan: Plan, streams: Streams, integral: Integral, wealth: Bounded, 
     )
 
 
-def _sum(role: str, lines: list[PresentValue]) -> PresentValue:
+def _paid(streams: Streams, lumps: tuple[Floats, Floats], k: int, end: int, *, rows: bool) -> Bounded:
+    """The lump sums of stream k in the rows, or after them; at the end of the rows itself what belongs before it is theirs."""
+    assert streams.lumps is not None, "there are lump sums"
+    split = end + (0 if streams.lumps.after[k, 0] and end < lumps[0].shape[1] - 1 else 1)
+    kept = slice(None, split) if rows else slice(split, None)
+    return total(lumps[0][k, kept], lumps[1][k, kept])
+
+
+def _sum(side: str, lines: list[PresentValue]) -> PresentValue:
+    """All of one side; deductions are taken off income."""
     rows = tail = ZERO
     reaches = set()
     for line in lines:
-        if line.role == role:
-            rows, tail = rows + line.rows, tail + line.tail
+        if line.side == side:
+            rows = rows - line.rows if line.role == "deduction" else rows + line.rows
+            tail = tail - line.tail if line.role == "deduction" else tail + line.tail
             reaches.add(line.reach)
     reach = next((r for r in (Reach.INFINITE, Reach.UNKNOWN) if r in reaches), Reach.FINITE)
-    return PresentValue(name=role, role=role, rows=rows, tail=tail, reach=reach)
+    return PresentValue(name=side, role=side, rows=rows, tail=tail, reach=reach)
 
 
 def tail_values(
@@ -236,12 +251,12 @@ def tail_values(
 
 
 def _last_period(mesh: Mesh, integral: Integral, lumps: tuple[Floats, Floats] | None, streams: Streams, k: int) -> Bounded:
-    """The present value of stream k over the last row's period."""
+    """The present value of stream k over the last period."""
     last = mesh.interval == mesh.interval[-1]
     base = total(integral.value[k, last], integral.bound[k, last])
     if lumps is None or streams.lumps is None:
         return base
-    at = streams.lumps.at[-1]
+    at = int(streams.lumps.last[k])
     return base + Bounded(float(lumps[0][k, at]), float(lumps[1][k, at]))
 
 

@@ -13,6 +13,9 @@ from enum import StrEnum
 from pathlib import Path
 from typing import IO, TYPE_CHECKING, Annotated, Any
 
+# plugins of a library that typer uses are not looked for: that takes longer than a small check, and no other code should run
+os.environ.setdefault("PYDANTIC_DISABLE_PLUGINS", "__all__")
+
 import typer
 from typer.core import TyperGroup
 

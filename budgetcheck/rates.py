@@ -8,6 +8,7 @@ is known only in floating point and carries its error.
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass, field
 from decimal import Context, Decimal
 from fractions import Fraction
@@ -28,12 +29,12 @@ _NEGLIGIBLE = Decimal("1e-45")
 class Rate:
     """A continuous rate in 1/year, closed under + and −.
 
-    linear : rational part; logs : pairs (m, F), each standing for m·ln F; measured, measured_error : the part known
+    linear : rational part; logs : pairs (m, F), each standing for m·ln F, m rational; measured, measured_error : the part known
     only in floating point.
     """
 
     linear: Fraction = Fraction(0)
-    logs: tuple[tuple[int, Fraction], ...] = field(default=())
+    logs: tuple[tuple[int | Fraction, Fraction], ...] = field(default=())
     measured: float = 0.0
     measured_error: float = 0.0
 
@@ -62,6 +63,11 @@ class Rate:
     def _combined(self, other: Rate, sign: int) -> Rate:
         if other is ZERO:
             return self
+        if self is ZERO and sign == 1:
+            return other
+        if not (self.logs or other.logs or self._measured or other._measured):
+            total = self.linear + other.linear if sign == 1 else self.linear - other.linear
+            return Rate(linear=total) if total else ZERO
         factors = dict(self.logs)
         for conversions, factor in other.logs:
             factors[conversions] = factors.get(conversions, Fraction(1)) * factor**sign
@@ -72,11 +78,29 @@ class Rate:
             measured_error=self.measured_error + other.measured_error,
         )
 
+    def times(self, by: Fraction) -> Rate:
+        """The rate times a rational number."""
+        if by == 0:
+            return ZERO
+        size = abs(float(by))
+        measured = self.measured * float(by)
+        return Rate(
+            linear=self.linear * by,
+            logs=tuple((m * by, f) for m, f in self.logs),
+            measured=measured,
+            measured_error=1.01 * (self.measured_error * size + 2.0 * UNIT * abs(measured)),
+        )
+
+    @property
+    def _measured(self) -> bool:
+        """Whether part of it is known only in floating point."""
+        return self.measured != 0.0 or self.measured_error != 0.0
+
     @cached_property
     def _declared_part(self) -> Decimal:
         total = _decimal(self.linear)
         for conversions, factor in self.logs:
-            total = _DIGITS.add(total, _DIGITS.multiply(Decimal(conversions), _DIGITS.ln(_decimal(factor))))
+            total = _DIGITS.add(total, _DIGITS.multiply(_decimal(Fraction(conversions)), _DIGITS.ln(_decimal(factor))))
         return total
 
     @cached_property
@@ -88,14 +112,14 @@ class Rate:
     def error(self) -> float:
         """Bound on |value − exact rate|; relative to the rate itself where all of it was declared."""
         rounding = UNIT * abs(float(self._declared_part))
-        if self.measured == 0.0 and self.measured_error == 0.0:
+        if not self._measured:
             return rounding * 1.01
         return 1.01 * (rounding + self.measured_error + 2.0 * UNIT * abs(self.measured) + UNIT * abs(self.value))
 
     @cached_property
     def sign(self) -> int | None:
         """1, 0 or −1, exactly, for declared rates; None where a measured rate is within its own error of zero."""
-        if self.measured == 0.0 and self.measured_error == 0.0:
+        if not self._measured:
             return self._declared_sign
         if abs(self.value) <= self.error:
             return None
@@ -108,8 +132,12 @@ class Rate:
         if abs(self._declared_part) > _NEGLIGIBLE:
             return 1 if self._declared_part > 0 else -1
         product = Fraction(1)
+        common = math.lcm(*(Fraction(conversions).denominator for conversions, _ in self.logs))
         for conversions, factor in self.logs:
-            product *= factor**conversions
+            power = Fraction(conversions) * common
+            if abs(power) > 10_000:
+                return None
+            product *= factor ** int(power)
         # ln of a rational other than 1 is irrational, so a tie needs both parts to vanish
         return 0 if self.linear == 0 and product == 1 else None
 

@@ -6,29 +6,38 @@ import difflib
 
 from .assumptions import Assumptions
 from .findings import Finding, stop
-from .keys import LATER
+from .keys import FLOW_ROLES
 from .table import Table
 from .text import folded, quoted
-from .timeline import KINDS, LATER_KINDS
+from .timeline import KINDS
 
-KNOWN_ROLES = {"wage": "income", "income": "income", "consumption": "consumption", "r": "r", "t": "time", "year": "time"}
-LATER_HEADERS = frozenset({*LATER_KINDS, "g", "n", "members", "productivity", "wealth", "household"})
+MEASURES = ("r", "g", "n", "inflation", "hazard", "survival", "members", "productivity", "adults", "children", "wealth")
+"""Headers of rates, levels and heads: each is a role of its own."""
+
+KNOWN_ROLES = {
+    "wage": "income",
+    "income": "income",
+    "consumption": "consumption",
+    **{name: name for name in MEASURES},
+    **dict.fromkeys(KINDS, "time"),
+}
 
 
 def roles_of(table: Table, assumptions: Assumptions) -> tuple[dict[str, str], list[Finding]]:
     """The role of every header, and what is wrong with headers and roles."""
-    declared = {folded(header): role for header, role in assumptions.columns}
+    declared = {folded(entry.header): entry.role for entry in assumptions.columns}
     headers = [column.header for column in table.columns]
     findings = [
         stop(
             "header-role",
             "the assumptions give this column a role, but the table does not have it;",
             file=assumptions.file,
-            column=header,
-            hint=_nearest(header, headers),
+            row=entry.row,
+            column=entry.header,
+            hint=_nearest(entry.header, headers),
         )
-        for header, _ in assumptions.columns
-        if folded(header) not in {folded(h) for h in headers}
+        for entry in assumptions.columns
+        if folded(entry.header) not in {folded(h) for h in headers}
     ]
     roles: dict[str, str] = {}
     for header in headers:
@@ -46,14 +55,14 @@ def roles_of(table: Table, assumptions: Assumptions) -> tuple[dict[str, str], li
 
 
 def _without_role(header: str, table: Table) -> Finding:
-    if folded(header) in LATER_HEADERS:
-        hint = f'Say [columns] "{header}" = "ignore" to leave the column out of account.'
-        message = f"a column '{folded(header)}' {LATER}."
+    if folded(header) == "household":
+        hint = f'Give each household a table of its own, or say [columns] "{header}" = "ignore" where all rows are of one.'
+        message = "a column 'household' belongs to a panel of households, not to one plan."
     else:
         likely = difflib.get_close_matches(folded(header), KNOWN_ROLES, n=1, cutoff=0.6)
         near = f" or rename it to {quoted(likely[0])}" if likely else ""
         message = "has no role;"
-        hint = f"give it one under [columns] in the assumptions (income, consumption or ignore){near}."
+        hint = f"give it one under [columns] in the assumptions ({', '.join(FLOW_ROLES)} or ignore){near}."
     return stop("header-role", message, file=table.file, row=1, column=header, raw=header, hint=hint)
 
 
@@ -62,7 +71,8 @@ def _role_findings(roles: dict[str, str], declared: dict[str, str], table: Table
     present = set(roles.values())
     by_role = {role: [h for h, r in roles.items() if r == role] for role in present}
     if len(by_role.get("time", [])) > 1:
-        message = f"has two time columns, {_joined(by_role['time'])}; keep one, or give the other the role ignore."
+        columns = by_role["time"]
+        message = f"has {len(columns)} time columns, {_joined(columns)}; keep one, or give the others the role ignore."
         findings.append(stop("header-role", message, file=table.file, row=1))
     if "time" not in present:
         message = f"has no time column; name one {' or '.join(quoted(kind) for kind in KINDS)}."

@@ -17,7 +17,8 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from .plan import LARGEST_EXPONENT, Plan, basis_factor
+from .exponents import Drift
+from .plan import LARGEST_EXPONENT, Factors, Plan
 from .quadrature import NODES, UNIT, WEIGHTS, Floats, Mask
 
 WINDOW = 0.25
@@ -127,7 +128,7 @@ class Curves:
 
 
 def last_rows(plan: Plan) -> LastRows:
-    """Income, consumption and r at the rows of the window, per unit of human capital."""
+    """Income, consumption and the discount rate at the rows of the window, per unit of human capital."""
     c, timeline = plan.conventions, plan.rows.timeline
     lengths = plan.amounts_path.lengths
     times = timeline.times + (lengths / 2.0 if c.periods else 0.0)
@@ -136,21 +137,74 @@ def last_rows(plan: Plan) -> LastRows:
     kept = np.arange(first, len(times))
     if len(kept) > MOST_IN_WINDOW:
         kept = np.unique(np.linspace(first, len(times) - 1, MOST_IN_WINDOW).astype(int))
-    per_year = 1.0 / lengths[kept] if c.periods and c.quoted == "per period" else 1.0
-    growth = {"per person": -c.g.value, "per effective unit": 0.0}.get(c.basis, -plan.growth.value)
-    level = float(basis_factor(c, c.basis) * c.unit) / plan.scale.value
-    factor = level * np.exp(growth * times[kept]) * per_year
     values, noise = np.zeros((3, len(kept))), np.zeros(3)
-    for amounts in plan.rows.amounts:
-        series = 0 if amounts.role == "income" else 1
-        values[series] += amounts.values[kept] * factor
-        noise[series] += _noise(amounts.values[kept], amounts.half_units, kept) * float(np.max(np.abs(factor)))
-    if plan.rows.rates is None:
-        values[2] = plan.interest.beyond.value
-    else:
-        values[2] = plan.rows.rates[kept]
-        noise[2] = _noise(plan.rows.rates[kept], plan.rows.rate_half_units, kept)
+    values[:2], noise[:2] = unit_amounts(plan, kept)
+    values[2], noise[2] = _discount_rate(plan, kept)
     return LastRows(s=times[kept] - times[-1], values=values, noise=noise)
+
+
+def unit_amounts(plan: Plan, kept: NDArray[np.intp]) -> tuple[Floats, Floats]:
+    """Income less deductions and consumption at those rows, money per unit of human capital and year, (2, j), without single
+    amounts, and what printing or floating point may have changed in them, (2,)."""
+    c, lengths = plan.conventions, plan.amounts_path.lengths
+    values, noise = np.zeros((2, len(kept))), np.zeros(2)
+    factors = Factors(plan.rows, c)
+    grown: dict[tuple[str, bool], Floats] = {}
+    for amounts, item in zip(plan.rows.amounts, plan.items, strict=False):
+        key = item.basis, item.nominal
+        if key not in grown:
+            grown[key] = _grown(plan, plan.drifts.of_basis(item.basis, nominal=item.nominal) - plan.drifts.growth, kept)
+        per_year = 1.0 / lengths[kept] if c.periods and item.quoted == "per period" else 1.0
+        level = float(factors.exact(item.basis) * amounts.reading.unit) / plan.scale.value
+        factor = level * grown[key] * per_year
+        series = 1 if item.role == "consumption" else 0
+        values[series] += amounts.values[kept] * factor * (-1.0 if item.role == "deduction" else 1.0)
+        noise[series] += _noise(amounts.values[kept], amounts.half_units, kept) * float(np.max(np.abs(factor)))
+    return values, noise
+
+
+def row_breaks(plan: Plan, kept: NDArray[np.intp]) -> NDArray[np.intp]:
+    """The breakpoint of each of those rows, of the last row of continuous data too."""
+    return np.append(plan.mesh.row_starts, len(plan.mesh.lengths))[kept]
+
+
+def _grown(plan: Plan, drift: Drift, kept: NDArray[np.intp]) -> Floats:
+    """exp of the running integral of a drift at those rows, in period data in the middle of their periods."""
+    exponent = drift.exponent(plan.mesh)
+    if exponent is None:
+        return np.ones(len(kept))
+    at = row_breaks(plan, kept)
+    if not plan.conventions.periods:
+        return np.exp(exponent.after[at])
+    return np.exp((exponent.after[at] + exponent.before[row_breaks(plan, kept + 1)]) / 2.0)
+
+
+def _discount_rate(plan: Plan, kept: NDArray[np.intp]) -> tuple[Floats, float]:
+    """The rate that discounts, with what measured growth takes from it beyond its last value, and its noise.
+
+    Where only r is a column it is read off its rows, otherwise off the slope of the exponent that they make together.
+    """
+    measures, drifts = plan.rows.measures, plan.drifts
+    moving = [exponent for _, exponent in drifts.net.parts]
+    if not moving:
+        return np.full(len(kept), drifts.discounting.beyond.value), 0.0
+    if len(moving) == 1 and "r" in measures and plan.conventions.curve == "forward":
+        r = measures["r"]
+        shift = drifts.discounting.beyond.value - float(r.values[-1])
+        return r.values[kept] + shift, _noise(r.values[kept], r.half_units, kept)
+    net = plan.net_exponent
+    assert net is not None, "a measured rate has an exponent"
+    growth = drifts.growth.beyond.value
+    ends = np.minimum(kept + 1, plan.row_intervals)
+    starts = ends - 1 if not plan.conventions.periods else kept
+    at, to = row_breaks(plan, starts), row_breaks(plan, ends)
+    slopes = (net.after[to] - net.after[at]) / (plan.mesh.breaks[to] - plan.mesh.breaks[at])
+    slopes[-1] = plan.net_beyond.value
+    noise = 64.0 * UNIT * float(np.abs(net.after[at]).max()) / float(plan.amounts_path.lengths.min())
+    for name in ("r", "g", "n", "inflation", "hazard"):
+        if name in measures:
+            noise += _noise(measures[name].values[kept], measures[name].half_units, kept)
+    return slopes + growth, noise
 
 
 def _noise(values: Floats, half_units: Floats | None, kept: NDArray[np.intp]) -> float:
@@ -226,11 +280,12 @@ def _least_squares(deviation: Floats, s: Floats) -> tuple[Floats, Floats, Mask]:
     return speed, departure, follows & (s[:, 0] < 0.0) & (speed > 1.0001 * SPEEDS[0] / span)
 
 
-def exponential(fits: Fits) -> Curves | None:
-    """The exponential curves of the whole window; None where a series that moves follows no decaying one."""
-    if not fits.sound[0]:
+def exponential(fits: Fits, window: int = 0) -> Curves | None:
+    """The exponential curves of a window that ends with the last row, the whole one (0) or its second half (2); None where a
+    series that moves follows no decaying one."""
+    if not fits.sound[window]:
         return None
-    departures, speeds = fits.departures[0], fits.speeds[0]
+    departures, speeds = fits.departures[window], fits.speeds[window]
     curves = {
         name: Curve(long_run=float(last - departure), departure=float(departure), speed=float(speed))
         for name, last, departure, speed in zip(_SERIES, fits.last, departures, speeds, strict=True)

@@ -2,160 +2,43 @@
 
 Streams live on a mesh of breakpoints 0 = t_0 < … < t_m, the same for everything in one plan. On each interval a stream is
 p(z)·exp(q(z)), z in [−1, 1]; streams side by side are added up by adding their integrals. At breakpoints there may be lump
-sums; after the last breakpoint a perpetual stream has a tail. An exponent is a running integral of a rate, E(t) = ∫_0^t rate,
-polynomial on each interval: restating by growth or discounting by interest adds ±E to q, so that one integral serves all.
+sums; after the last breakpoint a perpetual stream has a tail. Restating by growth or discounting by interest adds ±E, a running
+integral of a rate, to q, so that one integral serves all.
 """
 
 from __future__ import annotations
 
-import math
+from collections.abc import Sequence
 from dataclasses import dataclass, replace
+from typing import TypeVar
 
 import numpy as np
 from numpy.typing import NDArray
 
-from .bounded import ONE, Bounded
-from .quadrature import EXP_ERROR, SAFETY, UNIT, Floats, Integral, Mask, integrate, running_sum, summed
-from .rates import Rate
-
-
-@dataclass(frozen=True, kw_only=True, eq=False)
-class Mesh:
-    """Breakpoints of a plan. breaks : (m + 1,) years since the start; lengths : (m,) years, each right to one rounding;
-    interval : (m,) the interval between rows that each piece is part of."""
-
-    breaks: Floats
-    lengths: Floats
-    interval: NDArray[np.intp]
-    halvings: int = 0
-
-    @property
-    def row_starts(self) -> NDArray[np.intp]:
-        """The first piece of each interval between rows."""
-        if self.halvings == 0:
-            return self.interval
-        return np.flatnonzero(np.diff(self.interval, prepend=-1))
-
-    def split(self, mask: Mask) -> Mesh:
-        """Halve the intervals under the mask, (m,)."""
-        times = np.where(mask, 2, 1)
-        first = np.concatenate([[0], np.cumsum(times)[:-1]])
-        lengths = np.repeat(np.where(mask, self.lengths / 2.0, self.lengths), times)
-        breaks = np.empty(len(lengths) + 1)
-        breaks[first], breaks[-1] = self.breaks[:-1], self.breaks[-1]
-        breaks[first[mask] + 1] = self.breaks[:-1][mask] + self.lengths[mask] / 2.0
-        interval = np.repeat(self.interval, times)
-        return Mesh(breaks=breaks, lengths=lengths, interval=interval, halvings=self.halvings + 1)
-
-
-def _split_pieces(coefficients: Floats, mask: Mask) -> tuple[Floats, Floats]:
-    """Coefficients (k, m, d) on the halved mesh, and per piece a bound (k, m') on the rounding of the change of variable."""
-    degree = coefficients.shape[-1]
-    times = np.where(mask, 2, 1)
-    result = np.repeat(coefficients, times, axis=1)
-    error = np.zeros(result.shape[:2])
-    left = np.cumsum(times)[mask] - 2
-    old = coefficients[:, mask]
-    for offset, shift in ((0, -0.5), (1, 0.5)):
-        # z = z'/2 + shift: column j of the matrix holds the coefficients of (z'/2 + shift)^j
-        matrix = np.zeros((degree, degree))
-        for j in range(degree):
-            for i in range(j + 1):
-                matrix[j, i] = math.comb(j, i) * 0.5**i * shift ** (j - i)
-        result[:, left + offset] = old @ matrix
-        error[:, left + offset] = 2.0 * degree * UNIT * np.abs(old).sum(axis=-1)
-    return result, error
-
-
-@dataclass(frozen=True, kw_only=True, eq=False)
-class RatePath:
-    """A rate over time, 1/year: polynomial (m, d) on each interval, within error (m,); beyond the last row it is constant."""
-
-    coefficients: Floats
-    error: Floats
-    beyond: Rate
-
-    @classmethod
-    def constant(cls, rate: Rate, intervals: int) -> RatePath:
-        """The same rate throughout."""
-        return cls(coefficients=np.full((intervals, 1), rate.value), error=np.full(intervals, rate.error), beyond=rate)
-
-    def less(self, rate: Rate) -> RatePath:
-        """The path less a constant rate."""
-        coefficients = self.coefficients.copy()
-        coefficients[:, 0] -= rate.value
-        error = (self.error + rate.error + UNIT * np.abs(coefficients[:, 0])) * SAFETY
-        return RatePath(coefficients=coefficients, error=error, beyond=self.beyond - rate)
-
-    def split(self, mask: Mask) -> RatePath:
-        """The same path on the halved mesh."""
-        coefficients, rounding = _split_pieces(self.coefficients[None], mask)
-        error = np.repeat(self.error, np.where(mask, 2, 1)) + rounding[0]
-        return RatePath(coefficients=coefficients[0], error=error * SAFETY, beyond=self.beyond)
-
-
-@dataclass(frozen=True, kw_only=True, eq=False)
-class Exponent:
-    """E(t) = ∫_0^t rate: polynomial (m, d) on each interval within error (m,); at breakpoints (m + 1,) within at_error."""
-
-    coefficients: Floats
-    error: Floats
-    at: Floats
-    at_error: Floats
-    beyond: Rate
-
-    @classmethod
-    def of(cls, rate: RatePath, lengths: Floats) -> Exponent:
-        """Integrate a rate path; the running sum over intervals is compensated."""
-        half = lengths / 2.0
-        degree = rate.coefficients.shape[1]
-        raised = rate.coefficients * half[:, None] / np.arange(1.0, degree + 1.0)
-        # each term is ∫_{−1}^z z^j = (z^{j+1} − (−1)^{j+1})/(j + 1)
-        minus_one = np.where(np.arange(degree) % 2 == 0, -1.0, 1.0)
-        at_left = raised @ minus_one
-        increments = 2.0 * raised[:, ::2].sum(axis=1)
-        size = summed(np.abs(raised))
-        piece_error = lengths * rate.error * SAFETY + 8.0 * UNIT * size
-        at, at_error = running_sum(increments)
-        carried = np.concatenate([[0.0], np.cumsum(piece_error)])
-        at_error = (at_error + carried) * SAFETY
-        coefficients = np.concatenate([(at[:-1] - at_left)[:, None], raised], axis=1)
-        error = at_error[:-1] + piece_error + UNIT * np.abs(coefficients[:, 0])
-        return cls(coefficients=coefficients, error=error * SAFETY, at=at, at_error=at_error, beyond=rate.beyond)
-
-    @classmethod
-    def constant(cls, rate: Rate, mesh: Mesh) -> Exponent | None:
-        """E(t) = rate·t; None where the rate is exactly zero."""
-        if rate.sign == 0:
-            return None
-        at = rate.value * mesh.breaks
-        slope = rate.value / 2.0 * mesh.lengths
-        coefficients = np.stack([(at[:-1] + at[1:]) / 2.0, slope], axis=1)
-        # breakpoints are right to three roundings and one for each halving, the rate to its own error
-        at_error = ((4.0 + mesh.halvings) * UNIT * abs(rate.value) + rate.error) * mesh.breaks
-        error = at_error[1:] + 2.0 * UNIT * np.abs(slope)
-        return cls(coefficients=coefficients, error=error, at=at, at_error=at_error, beyond=rate)
-
-    @property
-    def largest(self) -> float:
-        """Bound on |E| over the rows."""
-        return float(summed(np.abs(self.coefficients)).max())
+from .bounded import Bounded
+from .exponents import Cut, Exponent, cut_pieces, padded
+from .quadrature import EXP_ERROR, SAFETY, UNIT, Floats, Integral, Mask, integrate, summed
 
 
 @dataclass(frozen=True, kw_only=True, eq=False)
 class Lumps:
-    """Lump sums of k streams at breakpoints: amounts·exp(exponent), amounts (k, m + 1) within errors, exponent (m + 1,) within
-    exponent_error; at (n,): the breakpoints where each row's sum is paid."""
+    """Lump sums of k streams at breakpoints: amounts·exp(exponent), amounts (k, m + 1) within errors, exponent (k or 1, m + 1)
+    within exponent_error; after (k, 1): whether a stream's sums belong to the interval after their breakpoint or to the one
+    before, which decides on which side of a jump they stand; at (k, n): the breakpoint of each row's sum; last (k,): that of
+    the last period's."""
 
     amounts: Floats
     errors: Floats
     exponent: Floats
     exponent_error: Floats
+    after: Mask
     at: NDArray[np.intp]
+    last: NDArray[np.intp]
 
     def restated(self, exponent: Exponent, sign: int) -> Lumps:
         """The sums times exp(sign·E) at their dates."""
-        total = self.exponent + sign * exponent.at
+        at = exponent.after if exponent.before is exponent.after else np.where(self.after, exponent.after, exponent.before)
+        total = self.exponent + sign * at
         error = (self.exponent_error + exponent.at_error + UNIT * np.abs(total)) * SAFETY
         return replace(self, exponent=total, exponent_error=error)
 
@@ -166,42 +49,52 @@ class Lumps:
         bounds = self.errors * grown + np.abs(values) * (1.01 * self.exponent_error + EXP_ERROR + 2.0 * UNIT)
         return values, bounds * SAFETY
 
-    def split(self, mask: Mask) -> Lumps:
-        """The same sums on the halved mesh; between them nothing is paid, so the exponent there does not matter."""
-        at = np.concatenate([[0], np.cumsum(np.where(mask, 2, 1))])
-        count = int(at[-1]) + 1
-        amounts, errors = np.zeros((len(self.amounts), count)), np.zeros((len(self.amounts), count))
-        exponent, exponent_error = np.zeros(count), np.zeros(count)
-        amounts[:, at], errors[:, at] = self.amounts, self.errors
-        exponent[at], exponent_error[at] = self.exponent, self.exponent_error
-        return Lumps(amounts=amounts, errors=errors, exponent=exponent, exponent_error=exponent_error, at=at[self.at])
+    def split(self, cut: Cut) -> Lumps:
+        """The same sums on the finer mesh; between them nothing is paid, so the exponent there does not matter."""
+        at = np.concatenate([[0], np.cumsum(cut.times)])
+
+        def spread(values: Floats) -> Floats:
+            wider = np.zeros((len(values), int(at[-1]) + 1))
+            wider[:, at] = values
+            return wider
+
+        return replace(
+            self,
+            amounts=spread(self.amounts),
+            errors=spread(self.errors),
+            exponent=spread(self.exponent),
+            exponent_error=spread(self.exponent_error),
+            at=at[self.at],
+            last=at[self.last],
+        )
 
 
 @dataclass(frozen=True, kw_only=True, eq=False)
 class Tail:
     """What follows the last breakpoint T of k perpetual streams.
 
-    Either levels·exp(exponent), levels (k,) within errors (k,): the stream goes on from there; or, with `period` set (years),
-    the last period before T comes again and again. In both cases it grows from then on at a rate of its own, which belongs to
-    the plan: decay is the discount rate less that growth. flows (k,) says where anything flows in the tail at all.
+    Either levels·exp(exponent), levels (k,) within errors (k,), exponent (k or 1,): the stream goes on from there; or, with
+    `period` set (years), the last period before T comes again and again. In both cases it grows from then on at a rate of its
+    own, which belongs to the plan: decay is the discount rate less that growth. flows (k,) says where anything flows in the
+    tail at all.
     """
 
     levels: Floats
     errors: Floats
     flows: Mask
+    exponent: Floats
+    exponent_error: Floats
     period: float | None = None
-    exponent: float = 0.0
-    exponent_error: float = 0.0
 
     def restated(self, exponent: Exponent, sign: int) -> Tail:
         """The levels times exp(sign·E(T))."""
-        total = self.exponent + sign * float(exponent.at[-1])
-        error = (self.exponent_error + float(exponent.at_error[-1]) + UNIT * abs(total)) * SAFETY
+        total = self.exponent + sign * float(exponent.before[-1])
+        error = (self.exponent_error + float(exponent.at_error[-1]) + UNIT * np.abs(total)) * SAFETY
         return replace(self, exponent=total, exponent_error=error)
 
     def values(self) -> tuple[Floats, Floats]:
         """The levels at T and proved bounds, both (k,)."""
-        grown = math.exp(self.exponent)
+        grown = np.exp(self.exponent)
         values = self.levels * grown
         bounds = self.errors * grown + np.abs(values) * (1.01 * self.exponent_error + EXP_ERROR + 2.0 * UNIT)
         return values, bounds * SAFETY
@@ -221,48 +114,85 @@ class Streams:
     lumps: Lumps | None = None
     tail: Tail | None = None
 
-    def restated(self, exponent: Exponent | None, *, sign: int = 1, factor: Bounded = ONE) -> Streams:
-        """The streams times factor·exp(sign·E(t)), E = 0 where there is no exponent. Discounting is sign = −1."""
-        p, p_error, lumps, tail = self.p, self.p_error, self.lumps, self.tail
-        if factor != ONE:
-            relative = factor.bound / abs(factor.value) + 2.0 * UNIT
-            p = self.p * factor.value
-            p_error = (abs(factor.value) * self.p_error + relative * summed(np.abs(p))) * SAFETY
-            lumps, tail = self._scaled(factor.value, relative)
-        q, q_error = self.q, self.q_error
-        if exponent is not None:
-            width = max(self.q.shape[2], exponent.coefficients.shape[1])
-            q = _padded(self.q, width) + sign * _padded(exponent.coefficients, width)[None]
-            q_error = (self.q_error + exponent.error + UNIT * summed(np.abs(q))) * SAFETY
-        if exponent is not None:
-            lumps = None if lumps is None else lumps.restated(exponent, sign)
-            tail = None if tail is None else tail.restated(exponent, sign)
-        return Streams(p=p, q=q, p_error=p_error, q_error=q_error, lumps=lumps, tail=tail)
-
-    def _scaled(self, factor: float, relative: float) -> tuple[Lumps | None, Tail | None]:
+    def times(self, factors: Sequence[Bounded]) -> Streams:
+        """Each stream times its factor, k of them."""
+        if all(factor.value == 1.0 and factor.bound == 0.0 for factor in factors):
+            return self
+        value = np.array([factor.value for factor in factors])
+        relative = np.array([factor.bound / abs(factor.value) + 2.0 * UNIT for factor in factors])
+        size = np.abs(value)
+        p = self.p * value[:, None, None]
+        p_error = (size[:, None] * self.p_error + relative[:, None] * summed(np.abs(p))) * SAFETY
         lumps, tail = self.lumps, self.tail
         if lumps is not None:
-            amounts = lumps.amounts * factor
-            errors = (lumps.errors * abs(factor) + np.abs(amounts) * relative) * SAFETY
+            amounts = lumps.amounts * value[:, None]
+            errors = (lumps.errors * size[:, None] + np.abs(amounts) * relative[:, None]) * SAFETY
             lumps = replace(lumps, amounts=amounts, errors=errors)
         if tail is not None:
-            levels = tail.levels * factor
-            errors = (tail.errors * abs(factor) + np.abs(levels) * relative) * SAFETY
-            tail = replace(tail, levels=levels, errors=errors)
-        return lumps, tail
+            levels = tail.levels * value
+            tail = replace(tail, levels=levels, errors=(tail.errors * size + np.abs(levels) * relative) * SAFETY)
+        return replace(self, p=p, p_error=p_error, lumps=lumps, tail=tail)
 
-    def split(self, mask: Mask) -> Streams:
-        """The same streams on the halved mesh."""
-        p, p_rounding = _split_pieces(self.p, mask)
-        q, q_rounding = _split_pieces(self.q, mask)
-        times = np.where(mask, 2, 1)
+    def restated(self, exponent: Exponent | None, *, sign: int = 1) -> Streams:
+        """The streams times exp(sign·E(t)), E = 0 where there is no exponent. Discounting is sign = −1."""
+        if exponent is None:
+            return self
+        width = max(self.q.shape[2], exponent.coefficients.shape[1])
+        q = padded(self.q, width) + sign * padded(exponent.coefficients, width)[None]
+        return replace(
+            self,
+            q=q,
+            q_error=(self.q_error + exponent.error + UNIT * summed(np.abs(q))) * SAFETY,
+            lumps=None if self.lumps is None else self.lumps.restated(exponent, sign),
+            tail=None if self.tail is None else self.tail.restated(exponent, sign),
+        )
+
+    def restated_each(self, exponents: Sequence[Exponent | None]) -> Streams:
+        """Each stream times exp(E(t)) with an exponent of its own, k of them."""
+        first = exponents[0]
+        if all(exponent is first for exponent in exponents):
+            return self.restated(first)
+        parts = [self._one(k).restated(exponent) for k, exponent in enumerate(exponents)]
+        width = max(part.q.shape[2] for part in parts)
+        lumps = [part.lumps for part in parts if part.lumps is not None]
+        tails = [part.tail for part in parts if part.tail is not None]
+        return replace(
+            self,
+            q=np.concatenate([padded(part.q, width) for part in parts]),
+            q_error=np.concatenate([part.q_error for part in parts]),
+            lumps=self.lumps and _stacked(self.lumps, lumps),
+            tail=self.tail and _stacked(self.tail, tails),
+        )
+
+    def _one(self, k: int) -> Streams:
+        """The stream k alone."""
+
+        def row(values: Floats) -> Floats:
+            return values[k : k + 1] if len(values) > 1 else values
+
+        def side(values: Mask) -> Mask:
+            return values[k : k + 1]
+
+        lumps, tail = self.lumps, self.tail
+        if lumps is not None:
+            lumps = replace(
+                lumps, exponent=row(lumps.exponent), exponent_error=row(lumps.exponent_error), after=side(lumps.after)
+            )
+        if tail is not None:
+            tail = replace(tail, exponent=row(tail.exponent), exponent_error=row(tail.exponent_error))
+        return replace(self, q=row(self.q), q_error=row(self.q_error), lumps=lumps, tail=tail)
+
+    def split(self, cut: Cut) -> Streams:
+        """The same streams on the finer mesh."""
+        p, p_rounding = cut_pieces(self.p, cut)
+        q, q_rounding = cut_pieces(self.q, cut)
         return replace(
             self,
             p=p,
             q=q,
-            p_error=(np.repeat(self.p_error, times, axis=1) + p_rounding) * SAFETY,
-            q_error=(np.repeat(self.q_error, times, axis=1) + q_rounding) * SAFETY,
-            lumps=None if self.lumps is None else self.lumps.split(mask),
+            p_error=(np.repeat(self.p_error, cut.times, axis=1) + p_rounding) * SAFETY,
+            q_error=(np.repeat(self.q_error, cut.times, axis=1) + q_rounding) * SAFETY,
+            lumps=None if self.lumps is None else self.lumps.split(cut),
         )
 
     def integral(self, lengths: Floats) -> Integral:
@@ -278,12 +208,17 @@ class Streams:
             largest = max(largest, float((np.abs(self.lumps.exponent) + amount).max()))
         if self.tail is not None:
             amount = np.log(np.maximum(np.abs(self.tail.levels), 1.0))
-            largest = max(largest, float((abs(self.tail.exponent) + amount).max()))
+            largest = max(largest, float((np.abs(self.tail.exponent) + amount).max()))
         return largest
 
 
-def _padded(coefficients: Floats, width: int) -> Floats:
-    missing = width - coefficients.shape[-1]
-    if missing == 0:
-        return coefficients
-    return np.concatenate([coefficients, np.zeros((*coefficients.shape[:-1], missing))], axis=-1)
+Part = TypeVar("Part", Lumps, Tail)
+
+
+def _stacked(whole: Part, parts: Sequence[Part]) -> Part:
+    """The whole with the exponents of its parts, one for each stream."""
+    return replace(
+        whole,
+        exponent=np.concatenate([part.exponent for part in parts]),
+        exponent_error=np.concatenate([part.exponent_error for part in parts]),
+    )

@@ -11,6 +11,7 @@ import hashlib
 import io
 import sys
 from dataclasses import dataclass
+from datetime import datetime, time
 from decimal import Decimal
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
@@ -203,8 +204,15 @@ def _frame_column(header: str, series: pd.Series[Any]) -> Column:
         return Column(header=header.strip(), cells=None, numbers=np.array([_as_float(cell) for cell in cells]))
     # everything else is read as text by the grammar of figures, so that True, None and 1_000 are refused by name
     missing = series.isna().tolist()
-    texts = ("" if gone else str(cell) for gone, cell in zip(missing, cells, strict=True))
+    texts = ("" if gone else _as_text(cell) for gone, cell in zip(missing, cells, strict=True))
     return Column(header=header.strip(), cells=tuple(texts))
+
+
+def _as_text(cell: Any) -> str:
+    """A cell as it would be printed; a timestamp at midnight is a date."""
+    if isinstance(cell, datetime) and cell.tzinfo is None and cell.time() == time():
+        return cell.date().isoformat()
+    return str(cell)
 
 
 def _as_float(cell: Any) -> float:

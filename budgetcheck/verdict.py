@@ -7,7 +7,7 @@ cases decide instead, each with a sentence of its own.
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from fractions import Fraction
 from typing import Any
 
@@ -15,9 +15,10 @@ from .budget import Account, Reach
 from .estimates import TailEstimate
 from .figures import significant
 from .plan import Plan
+from .wealth import WealthPath
 
 
-@dataclass(frozen=True, kw_only=True)
+@dataclass(frozen=True, kw_only=True, eq=False)
 class Errors:
     """The four kinds of error, kept apart, per unit of human capital; the first three make `in_verdict`.
 
@@ -35,7 +36,7 @@ class Errors:
         return self.numerical + self.reconstruction + self.tail
 
 
-@dataclass(frozen=True, kw_only=True)
+@dataclass(frozen=True, kw_only=True, eq=False)
 class Decision:
     """verdict: PASS, FAIL or UNDECIDED; reason and would_decide: sentences; slack: S, of the rows alone where tails are
     infinite; error: e; threshold: τ·scale; finite: whether slack is a finite figure; warning: what makes an infinite case
@@ -86,6 +87,21 @@ def decide(plan: Plan, account: Account, errors: Errors, tail: TailEstimate) -> 
     return case.without_limit()
 
 
+def breached(decision: Decision, plan: Plan, path: WealthPath) -> Decision:
+    """FAIL where wealth provably falls below a declared borrowing limit, whatever slack there is."""
+    breach = path.breach
+    if breach is None or breach.since is None:
+        return decision
+    date = plan.rows.timeline.date
+    reason = (
+        f"The plan exceeds its declared borrowing limit from {date(breach.since)} on, "
+        f"by up to {significant(-breach.room.value)} per household at {date(breach.room.t)}."
+    )
+    if decision.verdict == "FAIL":
+        reason = f"{decision.reason} {reason.replace('The plan', 'It also', 1)}"
+    return replace(decision, verdict="FAIL", reason=reason, would_decide=None)
+
+
 _DECLARE_TAIL = 'A declared tail (for example tail = "balanced growth" under [horizon]), or rows further into the future.'
 
 
@@ -101,13 +117,25 @@ class _Case:
     scale: float
 
     def last(self, role: str) -> Fraction:
-        """The sum of a role's last figures, exactly: what flows for ever after, up to a common factor."""
-        return sum((amounts.last for amounts in self.plan.rows.amounts if amounts.role == role), Fraction(0))
+        """What flows for ever after on one side, up to a common factor: the sum of its last figures, exactly, or what a
+        converging tail leads to."""
+        if self.plan.long_run is not None:
+            return self.plan.long_run[role != "income"]
+        taken = [-item.last if item.role == "deduction" else item.last for item in self.plan.items if item.side == role]
+        return sum(taken, Fraction(0))
+
+    def comparable(self) -> bool:
+        """Whether the last figures of all columns have the same meaning, so that their sums can be compared."""
+        items = [item for item in self.plan.items if item.last != 0]
+        meanings = {(item.basis, item.timing, item.quoted, item.nominal) for item in items}
+        return self.plan.long_run is not None or len(meanings) <= 1
 
     def infinite(self, role: str) -> bool:
         """Whether a role's present value is, or may be, infinite; flows that cancel for ever do not count."""
         side = self.account.income if role == "income" else self.account.consumption
-        return side.reach is not Reach.FINITE and self.last(role) != 0
+        if side.reach is Reach.UNKNOWN and self.plan.long_run is not None:
+            return True
+        return side.reach is not Reach.FINITE and (self.last(role) != 0 or not self.comparable())
 
     def _decision(self, verdict: str, reason: str, **figures: Any) -> Decision:
         given = {"would_decide": None, "slack": 0.0, "error": 0.0, "finite": False} | figures
@@ -131,9 +159,12 @@ class _Case:
             return self._decision("FAIL", reason)
         c = self.plan.conventions
         faster = (c.income_growth - c.consumption_growth).sign
+        both = "Both present values are infinite, and beyond the last row"
+        if faster == 0 and not self.comparable():
+            reason = f"{both} columns of different timing, basis or prices are not compared."
+            return self.undecided(reason, "One timing, basis and kind of prices for all columns.")
         if faster == 0 and income == consumption:
             return self._equal_for_ever()
-        both = "Both present values are infinite, and beyond the last row"
         if faster is None:
             return self.undecided(f"{both} it cannot be told which grows faster.", "Growth rates under one compounding.")
         # what grows faster decides by its own sign, equal growth by the difference

@@ -12,17 +12,30 @@ import math
 from dataclasses import dataclass, replace
 
 import numpy as np
+from numpy.typing import NDArray
 
 from .budget import Budget, Reach
+from .exponents import Exponent
 from .plan import LARGEST_EXPONENT, OutOfRange
-from .quadrature import ANTIDERIVATIVE, NODES, POINTS, Floats, antiderivative_at, at_nodes, polynomial, running_sum
-from .streams import Exponent
+from .quadrature import EXP_ERROR, NODES, Floats, antiderivative_at, polynomial, running_sum
 
 _SEARCH_POINTS = 65
-"""Points between two neighbouring nodes at which a minimum or a crossing is looked for."""
+"""Points between two neighbouring points of the grid at which a minimum or a crossing is looked for."""
+
+_BESIDE = 3
+_GAP = (1.0 + NODES[0]) * np.arange(1.0, _BESIDE + 1.0) / (_BESIDE + 1.0)
+GRID: Floats = np.concatenate([-1.0 + _GAP, NODES, 1.0 - _GAP[::-1]])
+"""Points of an interval at which its course is known: the Gauss nodes, and a few between them and the ends, where it may
+turn."""
+
+_ENDS_TOO: Floats = np.concatenate([[-1.0], GRID, [1.0]])
+_WITH_ENDS = len(_ENDS_TOO)
+
+_TO_GRID: Floats = antiderivative_at(GRID)
+_GRID_POWERS: Floats = GRID ** np.arange(32)[:, None]
 
 
-@dataclass(frozen=True, kw_only=True)
+@dataclass(frozen=True, kw_only=True, eq=False)
 class Extreme:
     """A value at a date: t in years since the start; error: what is known to be uncertain in the value."""
 
@@ -31,7 +44,7 @@ class Extreme:
     error: float
 
 
-@dataclass(frozen=True, kw_only=True)
+@dataclass(frozen=True, kw_only=True, eq=False)
 class HouseholdWealth:
     """minimum: the lowest wealth; largest_debt: the same as a positive amount, None without debt."""
 
@@ -40,44 +53,90 @@ class HouseholdWealth:
 
 
 @dataclass(frozen=True, kw_only=True, eq=False)
+class Breach:
+    """since: the first date with a debt above the declared limit, beyond its error, None without one; room: the least distance
+    from the limit, household money, negative beyond it."""
+
+    since: float | None
+    room: Extreme
+
+
+@dataclass(frozen=True, kw_only=True, eq=False)
 class WealthPath:
     """minimum: the lowest wealth per unit of human capital; per_household: in household money; first_negative: the first date
     with wealth below zero beyond its error; first_insolvent: the first date at which what is left to consume is worth more
-    than all there is to pay for it, beyond its error; discounted_nodes (m, 16): D at the nodes."""
+    than all there is to pay for it, beyond its error; breach: against a declared borrowing limit, None without one;
+    discounted_nodes (m, 16): D at the nodes."""
 
     minimum: Extreme
     per_household: HouseholdWealth
     first_negative: float | None
     first_insolvent: float | None
+    breach: Breach | None
     discounted_nodes: Floats
 
 
 @dataclass(frozen=True, eq=False)
-class _Course:
-    """D and an exponent E on the mesh: the course of e^E·D, at breakpoints before and after lump sums and at nodes."""
+class Course:
+    """D and an exponent E on the mesh: the course of factor·e^E·D, at breakpoints before and after lump sums and at nodes."""
 
     breaks: Floats
     lengths: Floats
     before: Floats
     after: Floats
-    nodes: Floats
+    grid: Floats
     net: Floats
     exponent: Exponent | None
     factor: float
     error: float
+    allowance: tuple[float, Exponent | None] | None = None
 
-    def _grown(self) -> tuple[Floats, Floats]:
-        """factor·e^E at breakpoints (m + 1,) and at nodes (m, 16)."""
+    @property
+    def at_nodes(self) -> Floats:
+        """D at the Gauss nodes, (m, 16)."""
+        return self.grid[:, _BESIDE:-_BESIDE]
+
+    def with_allowance(self, amount: float, exponent: Exponent | None) -> Course:
+        """The course of D + amount·e^A, which is below zero where wealth is below what may be owed."""
+        level = np.full(len(self.breaks), amount)
+        allowed, before, after, bound = np.full(self.grid.shape, amount), level, level, 0.0
+        if exponent is not None:
+            allowed = amount * np.exp(_on_grid(exponent.coefficients))
+            before, after = amount * np.exp(exponent.before), amount * np.exp(exponent.after)
+            bound = float((allowed.max(axis=1) * (1.01 * exponent.error + EXP_ERROR)).max())
+        return replace(
+            self,
+            grid=self.grid + allowed,
+            before=self.before + before,
+            after=self.after + after,
+            error=self.error + bound,
+            allowance=(amount, exponent),
+        )
+
+    def _grown(self) -> tuple[Floats, Floats, Floats]:
+        """factor·e^E at breakpoints, before and after a jump, (m + 1,), and at nodes, (m, 16)."""
         if self.exponent is None:
-            return np.full(len(self.breaks), self.factor), np.full(self.nodes.shape, self.factor)
-        return self.factor * np.exp(self.exponent.at), self.factor * np.exp(at_nodes(self.exponent.coefficients))
+            level = np.full(len(self.breaks), self.factor)
+            return level, level, np.full(self.grid.shape, self.factor)
+        e = self.exponent
+        after = self.factor * np.exp(e.after)
+        before = after if e.before is e.after else self.factor * np.exp(e.before)
+        return before, after, self.factor * np.exp(_on_grid(e.coefficients))
 
     def inside(self, interval: int, z: Floats) -> Floats:
         """factor·e^E·D at points z of one interval."""
-        d = self.after[interval] + self.lengths[interval] / 2.0 * (antiderivative_at(z) @ self.net[interval])
+        start = self.after[interval] - self._allowed(interval, np.full(1, -1.0))
+        d = start + self.lengths[interval] / 2.0 * (antiderivative_at(z) @ self.net[interval]) + self._allowed(interval, z)
         if self.exponent is None:
             return np.asarray(self.factor * d)
         return np.asarray(self.factor * np.exp(polynomial(self.exponent.coefficients[interval], z)) * d)
+
+    def _allowed(self, interval: int, z: Floats) -> Floats | float:
+        """amount·e^A at points z of one interval."""
+        if self.allowance is None:
+            return 0.0
+        amount, exponent = self.allowance
+        return amount if exponent is None else amount * np.exp(polynomial(exponent.coefficients[interval], z))
 
     def time(self, interval: int, z: float) -> float:
         """The date of a point of an interval, years since the start."""
@@ -85,21 +144,31 @@ class _Course:
 
     def lowest(self) -> Extreme:
         """The minimum over breakpoints and intervals."""
-        at_breaks, inside = self._grown()
-        course = inside * self.nodes
-        after, before = at_breaks * self.after, at_breaks * self.before
-        edge = np.minimum(after, before)
+        grown_before, grown_after, inside = self._grown()
+        course = inside * self.grid
+        edge = np.minimum(grown_after * self.after, grown_before * self.before)
         low = int(np.argmin(edge))
         interval, node = np.unravel_index(int(np.argmin(course)), course.shape)
         if edge[low] <= course[interval, node]:
-            return Extreme(t=float(self.breaks[low]), value=float(edge[low]), error=float(at_breaks[low]) * self.error)
+            return self._lowest_at_edge(low, float(edge[low]), float(grown_after[low]) * self.error)
         i, j = int(interval), int(node)
-        left = NODES[j - 1] if j > 0 else -1.0
-        right = NODES[j + 1] if j + 1 < POINTS else 1.0
-        z, value = self._descend(i, float(left), float(right))
+        left = GRID[j - 1] if j > 0 else -1.0
+        right = GRID[j + 1] if j + 1 < len(GRID) else 1.0
+        z, value = self.descend(i, float(left), float(right))
         return Extreme(t=self.time(i, z), value=value, error=float(inside[i, j]) * self.error)
 
-    def _descend(self, interval: int, left: float, right: float) -> tuple[float, float]:
+    def _lowest_at_edge(self, low: int, value: float, error: float) -> Extreme:
+        """The breakpoint, or a point right beside it where wealth still falls or has been falling."""
+        best = Extreme(t=float(self.breaks[low]), value=value, error=error)
+        beside = [(low, -1.0, float(GRID[0]))] if low < len(self.lengths) else []
+        beside += [(low - 1, float(GRID[-1]), 1.0)] if low > 0 else []
+        for interval, left, right in beside:
+            z, found = self.descend(interval, left, right)
+            if found < best.value:
+                best = Extreme(t=self.time(interval, z), value=found, error=error)
+        return best
+
+    def descend(self, interval: int, left: float, right: float) -> tuple[float, float]:
         """The vertex of the parabola through the three lowest of many points between left and right."""
         z = np.linspace(left, right, _SEARCH_POINTS)
         values = self.inside(interval, z)
@@ -115,33 +184,59 @@ class _Course:
     def first_below(self) -> float | None:
         """The first date at which the course is below zero by more than its error."""
         # factor·e^E is positive, so the sign is that of D
-        below_nodes = self.nodes < -self.error
-        below_after, below_before = self.after < -self.error, self.before < -self.error
-        intervals = below_nodes.any(axis=1) | below_after[:-1] | below_before[1:]
-        if not intervals.any():
-            return float(self.breaks[-1]) if below_after[-1] else None
-        i = int(np.argmax(intervals))
-        if below_after[i]:
-            return float(self.breaks[i])
-        z = np.concatenate([[-1.0], NODES, [1.0]])
-        low = np.concatenate([[False], below_nodes[i], [below_before[i + 1]]])
-        j = int(np.argmax(low))
-        points = np.linspace(z[j - 1], z[j], _SEARCH_POINTS)
-        values = self.inside(i, points)
-        values[-1] = min(values[-1], 0.0)
-        j = max(int(np.argmax(values <= 0.0)), 1)
-        # a straight line between two points so close finds the date to far better than a day
+        values = np.concatenate([self.after[:-1, None], self.grid, self.before[1:, None]], axis=1)
+        seen = np.flatnonzero((values < -self.error).ravel())
+        first = int(seen[0]) if len(seen) else values.size
+        for place in self._dips(values):
+            if place > first:
+                break
+            found = self._dip_below(*divmod(int(place), _WITH_ENDS))
+            if found is not None:
+                return found
+        if first == values.size:
+            return float(self.breaks[-1]) if self.after[-1] < -self.error else None
+        interval, j = divmod(first, _WITH_ENDS)
+        if j == 0:
+            return float(self.breaks[interval])
+        return self._crossing(interval, float(_ENDS_TOO[j - 1]), float(_ENDS_TOO[j]))
+
+    def _dips(self, values: Floats) -> NDArray[np.intp]:
+        """Places among the values (m, 24), in order, beside which the course may dip below zero between two points: a value
+        that is no higher than its neighbours, and above zero by no more than they are above it."""
+        before = np.concatenate([values[:, :1], values[:, :-1]], axis=1)
+        behind = np.concatenate([values[:, 1:], values[:, -1:]], axis=1)
+        drop = np.maximum(before, behind) - values
+        low = (values <= before) & (values <= behind) & (values - drop < -self.error)
+        return np.flatnonzero(low.ravel())
+
+    def _dip_below(self, interval: int, j: int) -> float | None:
+        """The date at which the course falls below zero beside a place of an interval; None where it does not."""
+        left, right = float(_ENDS_TOO[max(j - 1, 0)]), float(_ENDS_TOO[min(j + 1, _WITH_ENDS - 1)])
+        points = np.linspace(left, right, _SEARCH_POINTS)
+        own = replace(self, exponent=None, factor=1.0)
+        if float(own.inside(interval, points).min()) >= -self.error and own.descend(interval, left, right)[1] >= -self.error:
+            return None
+        z, _ = own.descend(interval, left, right)
+        return self.time(interval, left) if z <= left else self._crossing(interval, left, z)
+
+    def _crossing(self, interval: int, left: float, right: float) -> float:
+        """The date between two points of an interval at which the course, below zero at the second, gets there."""
+        for _ in range(2):
+            points = np.linspace(left, right, _SEARCH_POINTS)
+            values = self.inside(interval, points)
+            values[-1] = min(values[-1], 0.0)
+            j = max(int(np.argmax(values <= 0.0)), 1)
+            left, right = float(points[j - 1]), float(points[j])
         before, after = max(float(values[j - 1]), 0.0), float(values[j])
         share = before / (before - after) if before > after else 1.0
-        return self.time(i, float(points[j - 1] + share * (points[j] - points[j - 1])))
+        return self.time(interval, left + share * (right - left))
 
 
 def wealth_path(budget: Budget, reconstruction: float) -> WealthPath:
     """The path of wealth; reconstruction: the estimate of what interpolation between rows leaves open, in units of slack."""
     plan, unit = budget.plan, budget.unit
-    signs = np.where(plan.incomes, 1.0, -1.0)
     error = unit.account.rows_slack.bound + (reconstruction if np.isfinite(reconstruction) else 0.0)
-    course = _course(budget, unit.account.initial_wealth.value, signs, error)
+    course = course_of(budget, unit.account.initial_wealth.value, plan.signs, error)
     _check_range(course, (unit.discount, budget.household.discount))
     own = replace(course, exponent=unit.discount)
     household = replace(course, exponent=budget.household.discount, factor=plan.scale.value).lowest()
@@ -154,8 +249,22 @@ def wealth_path(budget: Budget, reconstruction: float) -> WealthPath:
         ),
         first_negative=own.first_below(),
         first_insolvent=_first_insolvent(budget, error),
-        discounted_nodes=course.nodes,
+        breach=_breach(budget, course),
+        discounted_nodes=course.at_nodes,
     )
+
+
+def _breach(budget: Budget, course: Course) -> Breach | None:
+    """Where K(t)/H falls below minus the borrowing limit, which is money of its own date in the basis of wealth."""
+    plan = budget.plan
+    limit = plan.borrowing
+    if limit is None:
+        return None
+    exponent = (plan.requirement - plan.drifts.discounting).exponent(plan.mesh)
+    allowed = course.with_allowance(limit.value / plan.scale.value, exponent)
+    _check_range(allowed, (budget.household.discount,))
+    household = replace(allowed, exponent=budget.household.discount, factor=plan.scale.value)
+    return Breach(since=allowed.first_below(), room=household.lowest())
 
 
 def _first_insolvent(budget: Budget, error: float) -> float | None:
@@ -168,10 +277,10 @@ def _first_insolvent(budget: Budget, error: float) -> float | None:
     if consumption.reach is not Reach.FINITE or account.income.reach is not Reach.FINITE or slack >= -error:
         return None
     start = slack + consumption.whole.value
-    return _course(budget, start, np.where(budget.plan.incomes, 0.0, -1.0), error).first_below()
+    return course_of(budget, start, np.where(budget.plan.consumption, -1.0, 0.0), error).first_below()
 
 
-def _course(budget: Budget, start: float, signs: Floats, error: float) -> _Course:
+def course_of(budget: Budget, start: float, signs: Floats, error: float) -> Course:
     """start + ∫_0^t of the signed discounted streams, on the mesh."""
     mesh, integral, lumps = budget.plan.mesh, budget.unit.integral, budget.unit.streams.lumps
     net = np.tensordot(signs, integral.nodes, axes=1)
@@ -180,19 +289,26 @@ def _course(budget: Budget, start: float, signs: Floats, error: float) -> _Cours
         # the sums of one date are netted first
         paid = running_sum(signs @ lumps.values()[0])[0]
         before, after = before + paid[:-1], after + paid[1:]
-    nodes = after[:-1, None] + (mesh.lengths / 2.0)[:, None] * (net @ ANTIDERIVATIVE.T)
-    return _Course(mesh.breaks, mesh.lengths, before, after, nodes, net, None, 1.0, error)
+    grid = after[:-1, None] + (mesh.lengths / 2.0)[:, None] * (net @ _TO_GRID.T)
+    return Course(mesh.breaks, mesh.lengths, before, after, grid, net, None, 1.0, error)
 
 
-def _check_range(course: _Course, exponents: tuple[Exponent | None, ...]) -> None:
+def _on_grid(coefficients: Floats) -> Floats:
+    """Polynomials (m, d) at the points of the grid, (m, 22)."""
+    return np.asarray(coefficients @ _GRID_POWERS[: coefficients.shape[-1]])
+
+
+def _check_range(course: Course, exponents: tuple[Exponent | None, ...]) -> None:
     """Refuse a path whose undiscounted amounts floating point cannot carry."""
-    size = math.log(max(float(np.abs(course.nodes).max()), float(np.abs(course.after).max()), 1.0))
+    size = math.log(max(float(np.abs(course.grid).max()), float(np.abs(course.after).max()), 1.0))
     for exponent in exponents:
         if exponent is None or size + exponent.largest <= LARGEST_EXPONENT:
             continue
         # only now is it worth looking date by date: where discounted wealth is large, its exponent may be negative
-        at_nodes_size = at_nodes(exponent.coefficients) + np.log(np.maximum(np.abs(course.nodes), 1.0))
-        at_breaks_size = exponent.at + np.log(np.maximum(np.maximum(np.abs(course.after), np.abs(course.before)), 1.0))
+        at_nodes_size = _on_grid(exponent.coefficients) + np.log(np.maximum(np.abs(course.grid), 1.0))
+        at_breaks_size = np.maximum(exponent.before, exponent.after) + np.log(
+            np.maximum(np.maximum(np.abs(course.after), np.abs(course.before)), 1.0)
+        )
         largest = max(float(at_nodes_size.max()), float(at_breaks_size.max()))
         if largest > LARGEST_EXPONENT:
             raise OutOfRange(

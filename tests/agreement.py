@@ -10,9 +10,6 @@ from oracle import PRECISION, Exact
 
 from budgetcheck import Assessment
 
-UNDECIDABLE = 1e-12
-"""A decay nearer to zero than this may be called unknown where r is a column."""
-
 
 class Claimed(Protocol):
     """A figure with a bound, as somebody claims it."""
@@ -54,13 +51,17 @@ def claims(found: Assessment, truth: Exact) -> list[tuple[str, Claimed, arb]]:
 
 
 def misjudged(found: Assessment, truth: Exact) -> list[str]:
-    """Columns whose present value is called finite, infinite or unknown when it is not."""
+    """Columns whose present value is called finite, infinite or unknown when it is not.
+
+    Unknown is right next to a tie of measured rates, and of what fades out beside a side without a finite value, where nothing
+    depends on it.
+    """
     wrong = []
-    constant = any(entry.key == "market.r" and entry.value != "column" for entry in found.assumptions)
     for line in found.present_values.lines:
-        near = abs(float(truth.decays[line.role].mid())) <= UNDECIDABLE
         finite = truth.lines[line.name] is not None
-        right = near and not constant if line.reach == "unknown" else (line.reach == "finite") is finite
+        tied = truth.blur > 0.0 and abs(float(truth.decays[line.side].mid())) <= truth.blur
+        beside = truth.slack is None and line.side in truth.fading
+        right = tied or beside if line.reach == "unknown" else (line.reach == "finite") is finite
         if not right:
             wrong.append(f"{line.name} is called {line.reach}")
     return wrong

@@ -94,6 +94,24 @@ class GrowthPath:
         rows = self.at(t)
         return pd.DataFrame({"t": t, "wage": rows.w, "consumption": consumption * rows.c, "r": rows.r})
 
+    def table_with_wealth(self, t: Floats, consumption: float = 1.0) -> pd.DataFrame:
+        """The same with the household's wealth at those times in a column."""
+        return self.table(t, consumption).assign(wealth=self.at(t).k)
+
+    @property
+    def impatience(self) -> float:
+        """ρ = D + n + (1 − θ)g: what the long run, where r* = ρ + θg, says of it."""
+        return self.long_run_net_rate + self.n + (1 - self.inverse_elasticity) * self.g
+
+    @property
+    def preferences(self) -> dict[str, float]:
+        """ρ and θ as assumptions."""
+        return {"rho": self.impatience, "theta": self.inverse_elasticity}
+
+    def settings_with_wealth(self, path: str | None = "smooth") -> dict[str, dict[str, object]]:
+        """The assumptions of a table that says wealth itself, with preferences."""
+        return self.settings(path) | {"household": {}, "preferences": dict(self.preferences)}
+
     def settings(self, path: str | None = "smooth", tail: str | None = "balanced growth") -> dict[str, dict[str, object]]:
         """The assumptions that go with the table; None leaves the path or the tail undeclared."""
         start = float(self.at(np.zeros(1)).k[0])
@@ -179,6 +197,18 @@ class Smith(_InClosedForm):
     def wealth_left_at(self, end: float) -> float:
         """e^{−Λ(T)} k(T) = q·e^{−DT} z(T)."""
         return self._scale * math.exp(-self.long_run_net_rate * end) * float(self.z(end))
+
+    def totals(self, years: int, *, balances: str = "start") -> pd.DataFrame:
+        """Yearly totals that carry the path exactly: r is its mean over each year, so that k grows by the same factor, and a
+        total spread evenly is worth what the year's flow is; wealth at the start or at the end of each year."""
+        t = np.arange(years + 1.0)
+        grown = -np.diff(np.log(self.discount_factors(t)))
+        worth = self.discount_factors(t[:-1]) * -np.expm1(-grown) / grown
+        wage = np.diff([self.income_to(end) for end in t]) / worth
+        consumption = np.diff([self.consumption_to(end) for end in t]) / worth
+        wealth = self.at(t).k[1:] if balances == "end" else self.at(t).k[:-1]
+        r = grown + self.n + self.g
+        return pd.DataFrame({"t": t[:-1], "wage": wage, "consumption": consumption, "r": r, "wealth": wealth})
 
 
 @dataclass(frozen=True, kw_only=True)

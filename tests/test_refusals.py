@@ -203,15 +203,15 @@ def test_rho_never_stands_in_for_r(tmp_path: Path) -> None:
     assert "rho does not stand in" in found.message
 
 
-def test_rho_beside_r_is_noted_and_changes_nothing(tmp_path: Path) -> None:
-    """Preferences do not enter the verdict; a note says that they were seen."""
+@pytest.mark.parametrize("keys", [{"rho": 0.2}, {"theta": 3}, {"rho": 0.2, "theta": 3}])
+def test_preferences_beside_r_change_nothing_in_the_verdict(keys: dict[str, float], tmp_path: Path) -> None:
+    """Preferences do not enter the verdict; where only one of the two is declared, a note says that nothing comes of it."""
     plain = assessed(tmp_path)
-    preferring = assessed(tmp_path, toml=SOUND + "[preferences]\nrho = 0.2\ntheta = 3\n")
+    declared = "\n".join(f"{name} = {value}" for name, value in keys.items())
+    preferring = assessed(tmp_path, toml=SOUND + f"[preferences]\n{declared}\n")
     assert preferring.slack == plain.slack
-    assert {(f.severity, f.column) for f in preferring.findings} == {
-        (Severity.NOTE, "preferences.rho"),
-        (Severity.NOTE, "preferences.theta"),
-    }
+    expected = {(Severity.NOTE, f"preferences.{name}") for name in keys} if len(keys) == 1 else set()
+    assert {(f.severity, f.column) for f in preferring.findings} == expected
 
 
 @pytest.mark.parametrize("options", [{}, {"r": "0.05"}])
@@ -481,61 +481,23 @@ def test_a_growth_in_geometric_paths_needs_amounts_above_zero(tmp_path: Path) ->
     assert (found.row, found.column, found.raw) == (3, "wage", "0")
 
 
-# ------------------------------------------------------------------------------------------ what this version does not know
+# ----------------------------------------------------------------------------------------------------- what is no single plan
 
 
-@pytest.mark.parametrize(
-    ("section", "key", "value"),
-    [
-        ("market", "curve", '"zero"'),
-        ("market", "prices", '"nominal"'),
-        ("market", "inflation", "0.02"),
-        ("amounts", "prices", '"nominal"'),
-        ("amounts", "day_count", '"ACT/ACT ISDA"'),
-        ("amounts", "wealth_at", '"end"'),
-        ("horizon", "tail", '"converging"'),
-        ("horizon", "income", "50"),
-        ("horizon", "consumption", "45"),
-        ("horizon", "speed", "0.1"),
-        ("limits", "borrowing", "50000"),
-    ],
-)
-def test_a_key_or_word_of_the_format_that_is_not_read_yet_is_refused_by_name(
-    section: str, key: str, value: str, tmp_path: Path
-) -> None:
-    """Leaving it out of account could turn a failing plan into a passing one."""
-    found = next(f for f in refused(tmp_path, toml=with_value(section, key, value)) if f.column == key)
-    assert "not of this version" in found.sentence
-    assert found.row is not None
-
-
-@pytest.mark.parametrize("role", ['"deduction"', '{role = "income"}', '{role = "income", timing = "in arrears", unit = 1000}'])
-def test_a_role_that_is_not_read_yet_is_refused_by_name(role: str, tmp_path: Path) -> None:
-    """Deductions and tables of conventions for one column are not taken for plain roles."""
-    plan = "year,wage,consumption,tax\n2031,100,90,1\n2032,100,90,1\n"
-    found = only(refused(tmp_path, plan, SOUND + f"[columns]\ntax = {role}\n"))
-    assert (found.column, found.row) == ("tax", 7)
-    assert "not of this version" in found.message
-
-
-@pytest.mark.parametrize(
-    "header", ["date", "quarter", "month", "age", "g", "n", "members", "productivity", "wealth", "household", "Wealth"]
-)
-def test_a_known_header_that_is_not_read_yet_is_refused_by_name(header: str, tmp_path: Path) -> None:
-    """A column that the format gives a meaning is not one that merely lacks a role."""
-    plan = f"year,wage,consumption,{header}\n2031,100,90,1\n2032,100,90,1\n"
+def test_a_panel_is_not_taken_for_one_plan(tmp_path: Path) -> None:
+    """A column of households is refused by name, unless all rows are declared to be of one."""
+    plan = "year,wage,consumption,household\n2031,100,90,1\n2032,100,90,1\n"
     found = only(refused(tmp_path, plan))
-    assert (found.row, found.column) == (1, header)
-    assert "not of this version" in found.message
-    assert assessed(tmp_path, plan, SOUND + f'[columns]\n{header} = "ignore"\n').verdict == "PASS"
+    assert (found.row, found.column) == (1, "household")
+    assert "panel" in found.message
+    assert assessed(tmp_path, plan, SOUND + '[columns]\nhousehold = "ignore"\n').verdict == "PASS"
 
 
-def test_a_time_axis_that_is_not_read_yet_is_refused(tmp_path: Path) -> None:
-    """A date alone is no axis in this version, and the two that are read are named."""
-    found = refused(tmp_path, "date,wage,consumption\n2031-01-01,100,90\n2032-01-01,100,90\n")
+def test_a_table_without_a_time_column_is_told_every_kind(tmp_path: Path) -> None:
+    """All that could be one are named."""
+    found = refused(tmp_path, "day,wage,consumption\n2031-01-01,100,90\n2032-01-01,100,90\n")
     sentences = " ".join(f.sentence for f in found)
-    assert "'date'" in sentences
-    assert "'t' or 'year'" in sentences
+    assert all(f"'{kind}'" in sentences for kind in ("t", "year", "date", "quarter", "month", "age"))
 
 
 # -------------------------------------------------------------------------------------------------------------------- roles

@@ -6,17 +6,22 @@ import json
 import math
 from collections.abc import Iterable
 from fractions import Fraction
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
 from ..assessment import Assessment
 from ..assumptions import Assumption
 from ..bounded import Bounded
 from ..budget import Account, PresentValue, Reach
+from ..carrying import RowShare
 from ..conditions import Condition
 from ..findings import Finding, Severity
 from ..text import visible
 from ..version import SCHEMA, VERSION
 from ..wealth import Extreme
+
+if TYPE_CHECKING:
+    from ..flow import Flow
+    from ..preferences import Preferences
 
 MOST_FINDINGS = 1000
 
@@ -71,6 +76,9 @@ def render(assessment: Assessment) -> str:
             "first_negative": a.wealth_path.first_negative,
         },
         "tail": _tail(a),
+        "carrying": _carrying(a),
+        **({} if a.flow is None else {"flow_of_wealth": _flow(a, a.flow)}),
+        **({} if a.preferences is None else {"preferences": _preferences(a.preferences)}),
         "assumptions": {visible(entry.key, 200): _assumption(entry) for entry in a.assumptions},
         "findings": [_finding(finding) for finding in a.findings[:MOST_FINDINGS]],
         "findings_total": sum(finding.places for finding in a.findings),
@@ -104,7 +112,8 @@ def _bounded(number: Bounded | None) -> dict[str, Any]:
 
 def _side(side: PresentValue, lines: Iterable[PresentValue]) -> dict[str, Any]:
     found = _bounded(side.whole if side.reach is Reach.FINITE else None)
-    columns = [{"column": visible(line.name, 200), **_side(line, ())} for line in lines if line.role == side.role]
+    own = [line for line in lines if line.side == side.role]
+    columns = [{"column": visible(line.name, 200), "role": line.role, **_side(line, ())} for line in own]
     return {**found, "columns": columns} if columns else found
 
 
@@ -156,11 +165,61 @@ def _tail(a: Assessment) -> dict[str, Any]:
         "share_of_consumption": a.tail.share_of_consumption,
         "estimate": a.tail.estimate.why,
     }
+    if a.tail.estimate.balanced is not None:
+        found["balanced_growth_slack"] = a.tail.estimate.balanced
     if a.tail.estimate.fit is not None:
         fit = a.tail.estimate.fit
         found["fit"] = {
             name: {"long_run": curve.long_run, "departure": curve.departure, "speed": curve.speed}
             for name, curve in vars(fit).items()
+        }
+    return found
+
+
+def _carrying(a: Assessment) -> dict[str, Any]:
+    def row(share: RowShare) -> dict[str, Any]:
+        return {
+            "row": a.lines[share.index],
+            "t": float(a.times[share.index]),
+            "income": share.income,
+            "consumption": share.consumption,
+            "net": share.net,
+            "rounding": share.rounding,
+        }
+
+    return {name: [row(share) for share in shares] for name, shares in vars(a.carrying).items()}
+
+
+def _flow(a: Assessment, flow: Flow) -> dict[str, Any]:
+    found: dict[str, Any] = {
+        "gap": flow.gap,
+        "first": None if flow.first is None else a.lines[flow.first],
+        "largest": [{"row": a.lines[each.index], "residual": each.value} for each in flow.largest],
+        "suspect": None,
+    }
+    if flow.suspect is not None:
+        found["suspect"] = {
+            "row": a.lines[flow.suspect.index],
+            "columns": [visible(name, 200) for name in flow.suspect.columns],
+            "change": flow.suspect.change,
+            "share": flow.suspect.share,
+        }
+    return found
+
+
+def _preferences(preferences: Preferences) -> dict[str, Any]:
+    sizes = [abs(value) for value in preferences.euler.tolist() if math.isfinite(value)]
+    found: dict[str, Any] = {"euler_largest": max(sizes, default=None), "best": None}
+    best = preferences.best
+    if best is not None:
+        found["best"] = {
+            "start": _bounded(best.start),
+            "per_household": best.per_household,
+            "growth_first": best.growth_first,
+            "growth_last": best.growth_last,
+            "planned": best.planned,
+            "asked": best.asked,
+            "change": best.change,
         }
     return found
 

@@ -15,6 +15,7 @@ from ..assessment import Assessment
 from ..assumptions import Assumption, shown
 from ..bounded import Bounded
 from ..budget import Account, PresentValue, Reach
+from ..carrying import RowShare
 from ..figures import amount, error, percent, significant
 from ..findings import Finding, Severity
 from ..text import visible
@@ -165,9 +166,10 @@ def _account(a: Assessment, full: bool) -> Iterator[Row]:
         ("Consumption", -1.0, (unit.consumption, household.consumption)),
     ):
         yield row(name, (_whole(sides[0]), _whole(sides[1])), sign)
-        lines = [pair for pair in zip(unit.lines, household.lines, strict=True) if pair[0].role == sides[0].role]
+        lines = [pair for pair in zip(unit.lines, household.lines, strict=True) if pair[0].side == sides[0].role]
         for one, other in lines if len(lines) > 1 or full else ():
-            yield row(f"  {visible(one.name, 28)}", (_whole(one), _whole(other)), sign)
+            taken_off = -1.0 if one.role == "deduction" else 1.0
+            yield row(f"  {visible(one.name, 28)}", (_whole(one), _whole(other)), sign * taken_off)
     yield row("Terminal requirement", (unit.terminal_wealth, household.terminal_wealth), -1.0)
     if a.slack.per_effective_unit is None or a.slack.per_household is None:
         yield "Slack", "not finite", "not finite"
@@ -199,6 +201,11 @@ def _conditions(a: Assessment) -> Iterator[tuple[str, str]]:
         "no_ponzi": "No-Ponzi",
         "transversality": "Transversality",
         "solvency": "Solvency",
+        "borrowing": "Borrowing limit",
+        "flow_of_wealth": "Flow of wealth",
+        "euler": "Euler equation",
+        "utility": "Utility integral",
+        "marginal_utility": "Marginal utility",
     }
     answers = {True: "holds", False: "does not hold", None: "not known"}
     for field, name in names.items():
@@ -225,6 +232,10 @@ def _basis(a: Assessment, full: bool) -> Iterator[tuple[str, str]]:
     if a.tail.kind != "none":
         shares = f"{percent(a.tail.share_of_income)} of income, {percent(a.tail.share_of_consumption)} of consumption"
         yield "From after the last row", f"{shares} ({a.tail.kind})"
+    if a.tail.estimate.balanced is not None:
+        yield "Under balanced growth", f"slack {significant(a.tail.estimate.balanced)} per unit of human capital"
+    yield from _best_path(a)
+    yield from _carrying(a, full)
     kinds = (
         ("Proved numerical error", a.error.numerical, ""),
         ("Estimate: path between rows", a.error.reconstruction, ""),
@@ -242,6 +253,40 @@ def _basis(a: Assessment, full: bool) -> Iterator[tuple[str, str]]:
         yield "Rounding of printed figures", f"{error(a.error.input_rounding)} per unit at the most; not in the verdict"
     difference = significant(a.routes_differ.value, 2)
     yield "Two routes to slack differ by", f"{difference} per unit; at most {a.routes_differ.bound:.2g} is proved"
+
+
+def _best_path(a: Assessment) -> Iterator[tuple[str, str]]:
+    """The consumption path that exhausts the budget for the declared preferences."""
+    best = None if a.preferences is None else a.preferences.best
+    if best is None:
+        return
+    change = "" if best.change is None else f", {percent(best.change)} beside the plan's {significant(best.planned)}"
+    yield (
+        "Path the preferences ask for",
+        f"starts at {significant(best.start.value)} per unit of human capital and year ({significant(best.asked)} in the first "
+        f"row{change}); per person it grows at {percent(best.growth_first)} a year at first, "
+        f"{percent(best.growth_last)} in the end",
+    )
+
+
+def _carrying(a: Assessment, full: bool) -> Iterator[tuple[str, str]]:
+    """The rows that contribute most, and in full those whose rounding matters most and the largest residuals."""
+
+    def named(share: RowShare) -> str:
+        when = a.date(float(a.times[share.index]))
+        parts = f"income {significant(share.income, 4)}, consumption {significant(share.consumption, 4)}"
+        return f"line {a.lines[share.index]} ({when}): {significant(share.net, 4)} net ({parts})"
+
+    if not full:
+        yield "Weighs most in slack", f"{named(a.carrying.to_slack[0])}, per unit"
+        return
+    for name, shares in (("slack", a.carrying.to_slack), ("present values", a.carrying.to_values)):
+        for share in shares:
+            yield f"Weighs most in {name}", f"{named(share)}, per unit"
+    for share in a.carrying.to_rounding:
+        yield "Rounding matters most in", f"line {a.lines[share.index]}: {error(share.rounding or 0.0)} per unit"
+    for each in () if a.flow is None else a.flow.largest:
+        yield "Largest residuals of wealth", f"line {a.lines[each.index]}: {significant(each.value, 3)} per unit, present value"
 
 
 def _assumptions(entries: Iterable[Assumption]) -> Iterator[tuple[str, str]]:
