@@ -226,7 +226,7 @@ def _euler(plan: Plan, found: Preferences) -> Condition:
         holds = False
     elif not known.all():
         holds = None
-    size = f"ln c moves by at most {significant(largest, 3)} over a row beside its due (row of {when})"
+    size = f"over a row, ln c misses its due growth by at most {significant(largest, 3)} (row of {when})"
     said = {
         True: "Consumption follows",
         False: "Consumption does not follow",

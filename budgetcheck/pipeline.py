@@ -143,7 +143,7 @@ def _assessed(taken: Intake, tailed: _Tailed, found: list[Finding]) -> Assessmen
     decision = breached(by_slack, plan, path)
     reported = _reported(computed, tailed, path, weights, by_slack)
     preferred = _preferred(computed)
-    found = [*found, *notices(ledger, taken.stated, plan, weights, decision), *flow_findings(ledger, plan, reported)]
+    found = [*found, *notices(ledger, taken.stated, plan, weights, by_slack), *flow_findings(ledger, plan, reported)]
     evidence = Evidence(plan=plan, account=unit, decision=by_slack, path=path, flow=reported, preferences=preferred)
     return Assessment(
         version=VERSION,

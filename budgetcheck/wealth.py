@@ -25,7 +25,7 @@ _SEARCH_POINTS = 65
 _BESIDE = 3
 _GAP = (1.0 + NODES[0]) * np.arange(1.0, _BESIDE + 1.0) / (_BESIDE + 1.0)
 GRID: Floats = np.concatenate([-1.0 + _GAP, NODES, 1.0 - _GAP[::-1]])
-"""Points of an interval at which its course is known: the Gauss nodes, and a few between them and the ends, where it may
+"""Points of an interval at which its trace is known: the Gauss nodes, and a few between them and the ends, where it may
 turn."""
 
 _ENDS_TOO: Floats = np.concatenate([[-1.0], GRID, [1.0]])
@@ -77,8 +77,8 @@ class WealthPath:
 
 
 @dataclass(frozen=True, eq=False)
-class Course:
-    """D and an exponent E on the mesh: the course of factor·e^E·D, at breakpoints before and after lump sums and at nodes."""
+class Trace:
+    """D and an exponent E on the mesh: the trace of factor·e^E·D, at breakpoints before and after lump sums and at nodes."""
 
     breaks: Floats
     lengths: Floats
@@ -96,8 +96,8 @@ class Course:
         """D at the Gauss nodes, (m, 16)."""
         return self.grid[:, _BESIDE:-_BESIDE]
 
-    def with_allowance(self, amount: float, exponent: Exponent | None) -> Course:
-        """The course of D + amount·e^A, which is below zero where wealth is below what may be owed."""
+    def with_allowance(self, amount: float, exponent: Exponent | None) -> Trace:
+        """The trace of D + amount·e^A, which is below zero where wealth is below what may be owed."""
         level = np.full(len(self.breaks), amount)
         allowed, before, after, bound = np.full(self.grid.shape, amount), level, level, 0.0
         if exponent is not None:
@@ -145,11 +145,11 @@ class Course:
     def lowest(self) -> Extreme:
         """The minimum over breakpoints and intervals."""
         grown_before, grown_after, inside = self._grown()
-        course = inside * self.grid
+        trace = inside * self.grid
         edge = np.minimum(grown_after * self.after, grown_before * self.before)
         low = int(np.argmin(edge))
-        interval, node = np.unravel_index(int(np.argmin(course)), course.shape)
-        if edge[low] <= course[interval, node]:
+        interval, node = np.unravel_index(int(np.argmin(trace)), trace.shape)
+        if edge[low] <= trace[interval, node]:
             return self._lowest_at_edge(low, float(edge[low]), float(grown_after[low]) * self.error)
         i, j = int(interval), int(node)
         left = GRID[j - 1] if j > 0 else -1.0
@@ -182,7 +182,7 @@ class Course:
         return float(z[best] + shift * (z[1] - z[0])), float(min(lowered, low, middle, high))
 
     def first_below(self) -> float | None:
-        """The first date at which the course is below zero by more than its error."""
+        """The first date at which the trace is below zero by more than its error."""
         # factor·e^E is positive, so the sign is that of D
         values = np.concatenate([self.after[:-1, None], self.grid, self.before[1:, None]], axis=1)
         seen = np.flatnonzero((values < -self.error).ravel())
@@ -201,7 +201,7 @@ class Course:
         return self._crossing(interval, float(_ENDS_TOO[j - 1]), float(_ENDS_TOO[j]))
 
     def _dips(self, values: Floats) -> NDArray[np.intp]:
-        """Places among the values (m, 24), in order, beside which the course may dip below zero between two points: a value
+        """Places among the values (m, 24), in order, beside which the trace may dip below zero between two points: a value
         that is no higher than its neighbours, and above zero by no more than they are above it."""
         before = np.concatenate([values[:, :1], values[:, :-1]], axis=1)
         behind = np.concatenate([values[:, 1:], values[:, -1:]], axis=1)
@@ -210,7 +210,7 @@ class Course:
         return np.flatnonzero(low.ravel())
 
     def _dip_below(self, interval: int, j: int) -> float | None:
-        """The date at which the course falls below zero beside a place of an interval; None where it does not."""
+        """The date at which the trace falls below zero beside a place of an interval; None where it does not."""
         left, right = float(_ENDS_TOO[max(j - 1, 0)]), float(_ENDS_TOO[min(j + 1, _WITH_ENDS - 1)])
         points = np.linspace(left, right, _SEARCH_POINTS)
         own = replace(self, exponent=None, factor=1.0)
@@ -220,7 +220,7 @@ class Course:
         return self.time(interval, left) if z <= left else self._crossing(interval, left, z)
 
     def _crossing(self, interval: int, left: float, right: float) -> float:
-        """The date between two points of an interval at which the course, below zero at the second, gets there."""
+        """The date between two points of an interval at which the trace, below zero at the second, gets there."""
         for _ in range(2):
             points = np.linspace(left, right, _SEARCH_POINTS)
             values = self.inside(interval, points)
@@ -236,10 +236,10 @@ def wealth_path(budget: Budget, reconstruction: float) -> WealthPath:
     """The path of wealth; reconstruction: the estimate of what interpolation between rows leaves open, in units of slack."""
     plan, unit = budget.plan, budget.unit
     error = unit.account.rows_slack.bound + (reconstruction if np.isfinite(reconstruction) else 0.0)
-    course = course_of(budget, unit.account.initial_wealth.value, plan.signs, error)
-    _check_range(course, (unit.discount, budget.household.discount))
-    own = replace(course, exponent=unit.discount)
-    household = replace(course, exponent=budget.household.discount, factor=plan.scale.value).lowest()
+    trace = trace_of(budget, unit.account.initial_wealth.value, plan.signs, error)
+    _check_range(trace, (unit.discount, budget.household.discount))
+    own = replace(trace, exponent=unit.discount)
+    household = replace(trace, exponent=budget.household.discount, factor=plan.scale.value).lowest()
     debt = household.value < -household.error
     return WealthPath(
         minimum=own.lowest(),
@@ -249,19 +249,19 @@ def wealth_path(budget: Budget, reconstruction: float) -> WealthPath:
         ),
         first_negative=own.first_below(),
         first_insolvent=_first_insolvent(budget, error),
-        breach=_breach(budget, course),
-        discounted_nodes=course.at_nodes,
+        breach=_breach(budget, trace),
+        discounted_nodes=trace.at_nodes,
     )
 
 
-def _breach(budget: Budget, course: Course) -> Breach | None:
+def _breach(budget: Budget, trace: Trace) -> Breach | None:
     """Where K(t)/H falls below minus the borrowing limit, which is money of its own date in the basis of wealth."""
     plan = budget.plan
     limit = plan.borrowing
     if limit is None:
         return None
     exponent = (plan.requirement - plan.drifts.discounting).exponent(plan.mesh)
-    allowed = course.with_allowance(limit.value / plan.scale.value, exponent)
+    allowed = trace.with_allowance(limit.value / plan.scale.value, exponent)
     _check_range(allowed, (budget.household.discount,))
     household = replace(allowed, exponent=budget.household.discount, factor=plan.scale.value)
     return Breach(since=allowed.first_below(), room=household.lowest())
@@ -277,10 +277,10 @@ def _first_insolvent(budget: Budget, error: float) -> float | None:
     if consumption.reach is not Reach.FINITE or account.income.reach is not Reach.FINITE or slack >= -error:
         return None
     start = slack + consumption.whole.value
-    return course_of(budget, start, np.where(budget.plan.consumption, -1.0, 0.0), error).first_below()
+    return trace_of(budget, start, np.where(budget.plan.consumption, -1.0, 0.0), error).first_below()
 
 
-def course_of(budget: Budget, start: float, signs: Floats, error: float) -> Course:
+def trace_of(budget: Budget, start: float, signs: Floats, error: float) -> Trace:
     """start + ∫_0^t of the signed discounted streams, on the mesh."""
     mesh, integral, lumps = budget.plan.mesh, budget.unit.integral, budget.unit.streams.lumps
     net = np.tensordot(signs, integral.nodes, axes=1)
@@ -290,7 +290,7 @@ def course_of(budget: Budget, start: float, signs: Floats, error: float) -> Cour
         paid = running_sum(signs @ lumps.values()[0])[0]
         before, after = before + paid[:-1], after + paid[1:]
     grid = after[:-1, None] + (mesh.lengths / 2.0)[:, None] * (net @ _TO_GRID.T)
-    return Course(mesh.breaks, mesh.lengths, before, after, grid, net, None, 1.0, error)
+    return Trace(mesh.breaks, mesh.lengths, before, after, grid, net, None, 1.0, error)
 
 
 def _on_grid(coefficients: Floats) -> Floats:
@@ -298,16 +298,16 @@ def _on_grid(coefficients: Floats) -> Floats:
     return np.asarray(coefficients @ _GRID_POWERS[: coefficients.shape[-1]])
 
 
-def _check_range(course: Course, exponents: tuple[Exponent | None, ...]) -> None:
+def _check_range(trace: Trace, exponents: tuple[Exponent | None, ...]) -> None:
     """Refuse a path whose undiscounted amounts floating point cannot carry."""
-    size = math.log(max(float(np.abs(course.grid).max()), float(np.abs(course.after).max()), 1.0))
+    size = math.log(max(float(np.abs(trace.grid).max()), float(np.abs(trace.after).max()), 1.0))
     for exponent in exponents:
         if exponent is None or size + exponent.largest <= LARGEST_EXPONENT:
             continue
         # only now is it worth looking date by date: where discounted wealth is large, its exponent may be negative
-        at_nodes_size = _on_grid(exponent.coefficients) + np.log(np.maximum(np.abs(course.grid), 1.0))
+        at_nodes_size = _on_grid(exponent.coefficients) + np.log(np.maximum(np.abs(trace.grid), 1.0))
         at_breaks_size = np.maximum(exponent.before, exponent.after) + np.log(
-            np.maximum(np.maximum(np.abs(course.after), np.abs(course.before)), 1.0)
+            np.maximum(np.maximum(np.abs(trace.after), np.abs(trace.before)), 1.0)
         )
         largest = max(float(at_nodes_size.max()), float(at_breaks_size.max()))
         if largest > LARGEST_EXPONENT:

@@ -18,7 +18,7 @@ from .paths import Geometric, Linear, Step
 from .plan import LARGEST_EXPONENT, Factors, Item, Plan
 from .quadrature import NODES, WEIGHTS, Floats, at_nodes, summed
 from .rows import RATES
-from .wealth import WealthPath, course_of
+from .wealth import WealthPath, trace_of
 
 
 @dataclass(frozen=True, kw_only=True, eq=False)
@@ -146,7 +146,7 @@ def _rate_weights(budget: Budget, path: WealthPath, name: str) -> Floats:
     else:
         whole = np.array([line.whole.value for line in budget.unit.account.lines])
         moved = plan.signs * signs
-        to_come = float(moved @ whole) - course_of(budget, 0.0, moved, 0.0).at_nodes
+        to_come = float(moved @ whole) - trace_of(budget, 0.0, moved, 0.0).at_nodes
     zero = name == "r" and plan.conventions.curve == "zero"
     if zero and not plan.conventions.periods:
         by_row = _zero_weights(budget)

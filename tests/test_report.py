@@ -350,13 +350,24 @@ def test_the_report_holds_what_the_verdict_rests_on(name: str, tmp_path: Path) -
         assert part in words
     for side in ("Initial wealth", "Income", "Consumption", "Terminal requirement", "Slack"):
         assert re.search(rf"^ *{side} ", page, re.MULTILINE)
+    listed = words[words.index("Assumptions") :]
     for entry in assessment.assumptions:
-        line = next(line for line in page.splitlines() if line.strip().startswith(f"{entry.key} "))
-        assert line.endswith(f"({entry.origin})")
+        paragraph = listed[listed.index(f" {entry.origin} ") :]
+        assert f" {entry.key} = " in paragraph
     for finding in assessment.findings:
         assert "".join(finding.sentence.split()) in "".join(page.split())
     assert assessment.reason in words
     assert assessment.would_decide is None or assessment.would_decide in words
+
+
+@ALL
+def test_the_full_report_lists_one_assumption_a_line(name: str, tmp_path: Path) -> None:
+    """Each with its value, unit and origin."""
+    assessment = case(name, tmp_path)
+    lines = terminal.render(assessment, full=True).splitlines()
+    for entry in assessment.assumptions:
+        line = next(line for line in lines if line.strip().startswith(f"{entry.key} "))
+        assert line.endswith(f"({entry.origin})")
 
 
 def test_warnings_stand_above_the_account_and_notes_below(tmp_path: Path) -> None:

@@ -55,7 +55,7 @@ def render(assessment: Assessment, *, width: int = 80, color: bool = False, full
     page.pairs(tuple(_basis(a, full)))
     source = f" from {visible(a.span.assumptions)}" if a.span.assumptions else ""
     page.heading(f"Assumptions{source} (and where each comes from)")
-    page.pairs(tuple(_assumptions(a.assumptions)))
+    page.pairs(tuple(_assumptions(a.assumptions) if full else _by_origin(a.assumptions)))
     rest = [finding for finding in a.findings if full or finding.severity is not Severity.WARN]
     if rest:
         page.heading("Findings")
@@ -237,7 +237,6 @@ def _basis(a: Assessment, full: bool) -> Iterator[tuple[str, str]]:
     yield from _best_path(a)
     yield from _carrying(a, full)
     kinds = (
-        ("Proved numerical error", a.error.numerical, ""),
         ("Estimate: path between rows", a.error.reconstruction, ""),
         ("Estimate: undeclared tail", a.error.tail, f" ({a.tail.estimate.why})" if a.error.tail else ""),
     )
@@ -251,8 +250,10 @@ def _basis(a: Assessment, full: bool) -> Iterator[tuple[str, str]]:
             yield f"Fitted tail: {name}", settles if curve.departure else f"stays at {significant(curve.long_run)}"
     if a.error.input_rounding is not None:
         yield "Rounding of printed figures", f"{error(a.error.input_rounding)} per unit at the most; not in the verdict"
-    difference = significant(a.routes_differ.value, 2)
-    yield "Two routes to slack differ by", f"{difference} per unit; at most {a.routes_differ.bound:.2g} is proved"
+    if full:
+        yield "Proved numerical error", f"{error(a.error.numerical)} per unit of human capital"
+        difference = significant(a.routes_differ.value, 2)
+        yield "Two routes to slack differ by", f"{difference} per unit; at most {a.routes_differ.bound:.2g} is proved"
 
 
 def _best_path(a: Assessment) -> Iterator[tuple[str, str]]:
@@ -289,7 +290,18 @@ def _carrying(a: Assessment, full: bool) -> Iterator[tuple[str, str]]:
         yield "Largest residuals of wealth", f"line {a.lines[each.index]}: {significant(each.value, 3)} per unit, present value"
 
 
+def _by_origin(entries: Sequence[Assumption]) -> Iterator[tuple[str, str]]:
+    """The same in running text, one paragraph for each origin."""
+    for origin in dict.fromkeys(entry.origin for entry in entries):
+        own = (entry for entry in entries if entry.origin == origin)
+        yield str(origin), "; ".join(f"{visible(entry.key, 40)} = {_value(entry)}" for entry in own)
+
+
+def _value(entry: Assumption) -> str:
+    """A value with its unit."""
+    return f"{visible(shown(entry.value))}{f' {entry.unit}' if entry.unit else ''}"
+
+
 def _assumptions(entries: Iterable[Assumption]) -> Iterator[tuple[str, str]]:
     for entry in entries:
-        unit = f" {entry.unit}" if entry.unit else ""
-        yield visible(entry.key, 32), f"{visible(shown(entry.value))}{unit} ({entry.origin})"
+        yield visible(entry.key, 32), f"{_value(entry)} ({entry.origin})"
