@@ -150,22 +150,26 @@ class Trace:
         low = int(np.argmin(edge))
         interval, node = np.unravel_index(int(np.argmin(trace)), trace.shape)
         if edge[low] <= trace[interval, node]:
-            return self._lowest_at_edge(low, float(edge[low]), float(grown_after[low]) * self.error)
+            found = Extreme(t=float(self.breaks[low]), value=float(edge[low]), error=float(grown_after[low]) * self.error)
+            return self._beside(found, low, trace)
         i, j = int(interval), int(node)
         left = GRID[j - 1] if j > 0 else -1.0
         right = GRID[j + 1] if j + 1 < len(GRID) else 1.0
         z, value = self.descend(i, float(left), float(right))
         return Extreme(t=self.time(i, z), value=value, error=float(inside[i, j]) * self.error)
 
-    def _lowest_at_edge(self, low: int, value: float, error: float) -> Extreme:
-        """The breakpoint, or a point right beside it where wealth still falls or has been falling."""
-        best = Extreme(t=float(self.breaks[low]), value=value, error=error)
-        beside = [(low, -1.0, float(GRID[0]))] if low < len(self.lengths) else []
-        beside += [(low - 1, float(GRID[-1]), 1.0)] if low > 0 else []
-        for interval, left, right in beside:
-            z, found = self.descend(interval, left, right)
-            if found < best.value:
-                best = Extreme(t=self.time(interval, z), value=found, error=error)
+    def _beside(self, edge: Extreme, low: int, trace: Floats) -> Extreme:
+        """The lowest breakpoint, or a point right beside it where wealth still falls or has been falling, as the parabola through
+        the breakpoint and the next two points of the grid has it."""
+        best = edge
+        sides = (low, -1.0, float(GRID[0]), (0, 1)), (low - 1, float(GRID[-1]), 1.0, (-1, -2))
+        for interval, left, right, near in sides:
+            if not 0 <= interval < len(self.lengths):
+                continue
+            next_to, after_next = (float(trace[interval, place]) for place in near)
+            if 4.0 * next_to - 3.0 * edge.value - after_next < 0.0:
+                z, found = self.descend(interval, left, right)
+                best = Extreme(t=self.time(interval, z), value=found, error=edge.error) if found < best.value else best
         return best
 
     def descend(self, interval: int, left: float, right: float) -> tuple[float, float]:
