@@ -5,7 +5,10 @@ from __future__ import annotations
 import math
 from dataclasses import dataclass
 
-from .quadrature import SAFETY, UNIT, Floats
+from .quadrature import SAFETY, UNDERFLOW, UNIT, Floats
+
+LARGE = 1e290
+"""Below its reciprocal a product may lose digits to gradual underflow."""
 
 
 @dataclass(frozen=True)
@@ -33,7 +36,8 @@ class Bounded:
         """The product with a factor known to a relative error."""
         value = self.value * factor
         bound = self.bound * abs(factor) * (1.0 + factor_error) + abs(value) * (factor_error + UNIT)
-        return Bounded(value, bound * SAFETY)
+        lost = UNDERFLOW if self.value != 0.0 and abs(value) < 1.0 / LARGE else 0.0
+        return Bounded(value, bound * SAFETY + lost)
 
 
 ZERO = Bounded(0.0)

@@ -21,9 +21,9 @@ from enum import StrEnum
 import numpy as np
 
 from .bounded import ZERO, Bounded, total
-from .exponents import Exponent, Mesh
+from .exponents import Cut, Drift, Exponent, Mesh
 from .plan import LARGEST_EXPONENT, OutOfRange, Plan
-from .quadrature import EXP_ERROR, MOST_HALVINGS, SAFETY, UNIT, Floats, Integral
+from .quadrature import EXP_ERROR, LARGEST_EXPONENT_ERROR, MOST_HALVINGS, SAFETY, UNIT, Floats, Integral
 from .rates import Rate
 from .streams import Streams
 
@@ -110,9 +110,9 @@ def budget(plan: Plan) -> Budget:
         unit, household = per_unit(plan), per_household(plan)
         coarse = unit.integral.coarse | household.integral.coarse
         if not coarse.any():
-            break
+            return Budget(plan=plan, unit=unit, household=household)
         plan = plan.split(coarse)
-    return Budget(plan=plan, unit=unit, household=household)
+    raise OutOfRange(_UNRESOLVED)
 
 
 def slack_only(plan: Plan) -> Account:
@@ -120,9 +120,9 @@ def slack_only(plan: Plan) -> Account:
     for _ in range(MOST_HALVINGS):
         unit = per_unit(plan)
         if not unit.integral.coarse.any():
-            break
+            return unit.account
         plan = plan.split(unit.integral.coarse)
-    return unit.account
+    raise OutOfRange(_UNRESOLVED)
 
 
 def per_household(plan: Plan) -> Route:
@@ -151,7 +151,9 @@ def _required(plan: Plan, less: tuple[Exponent | None, ...]) -> Bounded:
     error = sum(float(e.at_error[-1]) + 2.0 * UNIT * abs(float(e.before[-1])) for _, e in present)
     if abs(exponent) > LARGEST_EXPONENT:
         raise OutOfRange(_beyond(abs(exponent)))
-    return plan.terminal.times(math.exp(exponent), 1.01 * error + EXP_ERROR)
+    if error > LARGEST_EXPONENT_ERROR:
+        raise OutOfRange(_UNRESOLVED)
+    return plan.terminal.times(math.exp(exponent), 1.06 * error + EXP_ERROR)
 
 
 def _beyond(size: float) -> str:
@@ -161,10 +163,18 @@ def _beyond(size: float) -> str:
     )
 
 
+_UNRESOLVED = (
+    "rates are so extreme, or rows so uneven, that floating point does not resolve the discount exponent; check r, g and n "
+    "(fractions a year) and the unit of time"
+)
+
+
 def _route(plan: Plan, streams: Streams, discount: Exponent | None, wealth: Bounded, terminal: Bounded) -> Route:
     size = max(streams.log_size(plan.mesh.lengths), 0.0 if discount is None else discount.largest)
     if not size <= LARGEST_EXPONENT:
         raise OutOfRange(_beyond(size))
+    if streams.largest_exponent_error > LARGEST_EXPONENT_ERROR:
+        raise OutOfRange(_UNRESOLVED)
     integral = streams.integral(plan.mesh.lengths)
     account = _account(plan, streams, integral, wealth, terminal)
     return Route(streams=streams, discount=discount, integral=integral, account=account)
@@ -187,7 +197,7 @@ def _account(plan: Plan, streams: Streams, integral: Integral, wealth: Bounded, 
             if lumps is not None:
                 tail = tail + _paid(streams, lumps, k, end, rows=False)
         lines.append(PresentValue(name=item.name, role=item.role, rows=rows, tail=tail, reach=reach))
-    income, consumption = _sum("income", lines), _sum("consumption", lines)
+    income, consumption = (_sum(side, lines, _cancels(plan, side)) for side in ("income", "consumption"))
     rows_slack = wealth + income.rows - consumption.rows - terminal
     return Account(
         initial_wealth=wealth,
@@ -208,8 +218,17 @@ def _paid(streams: Streams, lumps: tuple[Floats, Floats], k: int, end: int, *, r
     return total(lumps[0][k, kept], lumps[1][k, kept])
 
 
-def _sum(side: str, lines: list[PresentValue]) -> PresentValue:
-    """All of one side; deductions are taken off income."""
+def _cancels(plan: Plan, side: str) -> bool:
+    """Whether what flows for ever on one side of the account is nothing in sum, exactly: wages and the same amount of
+    deductions."""
+    items = [item for item in plan.items if item.side == side and item.last != 0]
+    if len(items) < 2 or plan.extended or len({item.meaning for item in items}) > 1:
+        return False
+    return sum(-item.last if item.role == "deduction" else item.last for item in items) == 0
+
+
+def _sum(side: str, lines: list[PresentValue], cancels: bool) -> PresentValue:
+    """All of one side; deductions are taken off income. Tails that cancel add up to nothing, whatever each of them is."""
     rows = tail = ZERO
     reaches = set()
     for line in lines:
@@ -218,6 +237,8 @@ def _sum(side: str, lines: list[PresentValue]) -> PresentValue:
             tail = tail - line.tail if line.role == "deduction" else tail + line.tail
             reaches.add(line.reach)
     reach = next((r for r in (Reach.INFINITE, Reach.UNKNOWN) if r in reaches), Reach.FINITE)
+    if cancels and reach is not Reach.FINITE:
+        tail, reach = ZERO, Reach.FINITE
     return PresentValue(name=side, role=side, rows=rows, tail=tail, reach=reach)
 
 
@@ -273,3 +294,31 @@ def _repetition(base: Bounded, decay: Rate, period: float) -> Bounded:
         return Bounded(0.0, (abs(base.value) + base.bound) * math.exp(-LARGEST_EXPONENT))
     relative = decay.error / decay.value
     return base.times(1.0 / math.expm1(x), 2.0 * (relative + 4.0 * UNIT) * (1.0 + x) + EXP_ERROR * SAFETY)
+
+
+def worth_of_one(plan: Plan, drift: Drift) -> Bounded | None:
+    """∫ exp(∫ drift) dt over the plan, tail included: what a flow of 1 a year that grows and is discounted so is worth; None
+    where that is infinite or beyond floating point. drift: of the plan's mesh."""
+    mesh = plan.mesh
+    for _ in range(MOST_HALVINGS):
+        exponent = drift.exponent(mesh)
+        none = np.zeros((1, len(mesh.lengths)))
+        stream = Streams(p=np.ones((1, len(mesh.lengths), 1)), q=none[:, :, None], p_error=none, q_error=none).restated(
+            exponent
+        )
+        if stream.log_size(mesh.lengths) > LARGEST_EXPONENT or stream.largest_exponent_error > LARGEST_EXPONENT_ERROR:
+            return None
+        integral = stream.integral(mesh.lengths)
+        if not integral.coarse.any():
+            break
+        cut = Cut.halves(integral.coarse)
+        mesh = mesh.split(integral.coarse)
+        drift = Drift(constant=drift.constant, parts=tuple((sign, part.split(cut)) for sign, part in drift.parts))
+    worth = total(integral.value[0], integral.bound[0])
+    if not plan.conventions.perpetual:
+        return worth
+    decay = Rate() - drift.beyond
+    if decay.sign != 1:
+        return None
+    level, error = (1.0, 0.0) if exponent is None else (math.exp(exponent.before[-1]), float(exponent.at_error[-1]))
+    return worth + _perpetuity(Bounded(level, level * (1.06 * error + EXP_ERROR)), decay)

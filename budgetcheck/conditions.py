@@ -88,7 +88,7 @@ def conditions(e: Evidence) -> Conditions:
         convergence=_convergence(plan, account) if plan.conventions.perpetual else None,
         no_ponzi=_no_ponzi(plan, account, decision),
         transversality=transversality,
-        solvency=_solvency(plan, decision, e.path),
+        solvency=_solvency(plan, account, decision, e.path),
         borrowing=_borrowing(plan, e.path),
         flow_of_wealth=None if e.flow is None else _flow_of_wealth(plan, e.flow),
         euler=None if e.preferences is None else _euler(plan, e.preferences),
@@ -146,8 +146,10 @@ def _transversality(plan: Plan, account: Account, decision: Decision) -> Conditi
     rate = None
     speed = ""
     if plan.conventions.perpetual:
-        rate = min(decay.value for decay in plan.decays)
-        speed = f"; discounted wealth approaches its limit at {rate:.4g} a year"
+        tail = plan.streams.tail
+        flowing = [] if tail is None else [decay.value for decay, flows in zip(plan.decays, tail.flows, strict=True) if flows]
+        rate = min(flowing) if flowing and min(flowing) > 0.0 else None
+        speed = "" if rate is None else f"; discounted wealth approaches its limit at {rate:.4g} a year"
     sentence = {
         True: f"Nothing of value is left unused (limit {significant(account.slack.value, 3)}, within tolerance{speed}).",
         False: f"Something is {'left unused' if account.slack.value > 0 else 'missing'} for good: "
@@ -158,7 +160,7 @@ def _transversality(plan: Plan, account: Account, decision: Decision) -> Conditi
     return Condition(holds=holds, limit=limit, rate_of_approach=rate, sentence=sentence)
 
 
-def _solvency(plan: Plan, decision: Decision, path: WealthPath) -> Condition:
+def _solvency(plan: Plan, account: Account, decision: Decision, path: WealthPath) -> Condition:
     """With consumption never negative it follows from the verdict's inequality; where that fails, the path dates it."""
     holds = {"PASS": True, "FAIL": False}.get(decision.verdict)
     if holds:
@@ -166,7 +168,8 @@ def _solvency(plan: Plan, decision: Decision, path: WealthPath) -> Condition:
     if holds is None:
         return Condition(holds=None, sentence="Whether debts can always be repaid out of income still to come cannot be told.")
     if path.first_insolvent is None:
-        when = "only after the last row" if plan.conventions.perpetual and decision.finite else "sooner or later"
+        known = decision.finite and all(side.reach is Reach.FINITE for side in (account.income, account.consumption))
+        when = "only after the last row" if plan.conventions.perpetual and known else "sooner or later"
         return Condition(holds=False, sentence=f"{when.capitalize()} more is owed than income still to come can repay.")
     date = plan.rows.timeline.date(path.first_insolvent)
     sentence = f"From {date} on more is owed than income still to come can repay."

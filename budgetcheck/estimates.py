@@ -139,7 +139,7 @@ def fitted(plan: Plan) -> Fitted:
     from .settling import FEWEST_IN_WINDOW, exponential, fit, last_rows
 
     rows = last_rows(plan)
-    moving = rows.movement > rows.noise
+    moving = rows.movement > rows.noise * (1.0 + 1e-9)
     discount = plan.net_exponent
     weight = TAIL_FACTOR * (1.0 if discount is None else math.exp(-float(discount.before[-1])))
     still = _lasting_shift(rows, np.where(moving, 0.0, rows.movement), plan)
@@ -159,14 +159,22 @@ def fitted(plan: Plan) -> Fitted:
 
 
 def _lasting_shift(rows: LastRows, shift: Floats, plan: Plan) -> float:
-    """What a lasting shift of income, consumption and r, (3,), would change in the tail, at most, to first order."""
+    """What may hide under the rounding of the last rows, at most: a shift of income, consumption and r, (3,), that lasts, or
+    that goes on as a drift of so much in each window.
+
+    A lasting shift x of a flow is worth x/δ, a drift of x in w years x/(wδ²); of the rate, on a net flow f, f·x/(δ(δ − x)) and
+    that over w(δ − x).
+    """
     decay = float(rows.values[2, -1]) - plan.drifts.growth.beyond.value
     if not shift.any():
         return 0.0
-    if decay <= 0.0:
+    left = decay - float(shift[2])
+    if left <= 0.0:
         return math.inf
+    window = max(-float(rows.s[0]), 1e-9)
     net = abs(float(rows.values[0, -1] - rows.values[1, -1]))
-    return float((shift[0] + shift[1]) / decay + net / decay**2 * shift[2])
+    goes_on = max(1.0, 1.0 / (window * left))
+    return float(((shift[0] + shift[1]) / left + net / (decay * left) * shift[2]) * goes_on)
 
 
 def _difference(rows: LastRows, settled: Curves, slower: Curves | None, plan: Plan) -> tuple[float, str]:

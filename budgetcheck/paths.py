@@ -219,7 +219,9 @@ class Smooth:
             h = self.lengths
             margin = h[:-1] + h[1:]
             margin[0], margin[-1] = h[1], h[-2]
-            worst = np.max(residual / margin, axis=1, keepdims=True)
+            sure = margin - 16.0 * UNIT * main
+            sizes = np.where(sure > 0.0, residual / np.where(sure > 0.0, sure, 1.0), np.inf)
+            worst = np.max(sizes, axis=1, keepdims=True)
             candidate = np.where(short.any(axis=1, keepdims=True), np.broadcast_to(worst, candidate.shape), candidate)
         return np.asarray(candidate)
 

@@ -65,6 +65,11 @@ class Item:
         return 1.0 if self.role == "income" else -1.0
 
     @property
+    def meaning(self) -> tuple[object, ...]:
+        """What its figures mean; those of the same meaning can be added up."""
+        return self.basis, self.timing, self.quoted, self.nominal
+
+    @property
     def side(self) -> str:
         """The side of the account it belongs to: deductions are taken off income."""
         return "consumption" if self.role == "consumption" else "income"

@@ -19,15 +19,14 @@ from fractions import Fraction
 
 import numpy as np
 
-from .bounded import Bounded, total
-from .budget import Budget, Reach
+from .bounded import Bounded
+from .budget import Budget, Reach, worth_of_one
 from .exponents import Drift, Exponent
 from .paths import Smooth
 from .plan import LARGEST_EXPONENT, Plan
-from .quadrature import MOST_HALVINGS, UNIT, Floats
+from .quadrature import UNIT, Floats
 from .rates import Rate
 from .settling import row_breaks, unit_amounts
-from .streams import Streams
 from .timeline import every_second
 from .usual import usual
 
@@ -172,7 +171,7 @@ def _best(budget: Budget, growth: Drift, planned: float, shift: float) -> BestPa
     plan, account = budget.plan, budget.unit.account
     if account.income.reach is not Reach.FINITE:
         return None
-    worth = _worth(plan)
+    worth = worth_of_one(plan, growth - plan.drifts.net)
     resources = account.initial_wealth + account.income.whole - account.terminal_wealth
     if worth is None or not resources.value - resources.bound > 0.0:
         return None
@@ -200,34 +199,3 @@ def _slope(exponent: Exponent, plan: Plan, piece: int, z: float) -> float:
     coefficients = exponent.coefficients[piece]
     powers = np.arange(1, len(coefficients))
     return float((coefficients[1:] * powers * z ** (powers - 1.0)).sum() * 2.0 / plan.mesh.lengths[piece])
-
-
-def _worth(plan: Plan) -> Bounded | None:
-    """∫ exp(∫ ((r − ρ)/θ − g) − Λ) dt over the plan, tail included; None where infinite or beyond floating point."""
-    c = plan.conventions
-    assert c.rho is not None, "preferences are declared"
-    assert c.theta is not None, "preferences are declared"
-    for _ in range(MOST_HALVINGS):
-        drift = _growth(plan, c.rho, c.theta) - plan.drifts.net
-        exponent = drift.exponent(plan.mesh)
-        intervals = len(plan.mesh.lengths)
-        none = np.zeros((1, intervals))
-        stream = Streams(p=np.ones((1, intervals, 1)), q=np.zeros((1, intervals, 1)), p_error=none, q_error=none)
-        stream = stream.restated(exponent)
-        if stream.log_size(plan.mesh.lengths) > LARGEST_EXPONENT:
-            return None
-        integral = stream.integral(plan.mesh.lengths)
-        if not integral.coarse.any():
-            break
-        plan = plan.split(integral.coarse)
-    worth = total(integral.value[0], integral.bound[0])
-    if not c.perpetual:
-        return worth
-    decay = Rate() - drift.beyond
-    if decay.sign != 1:
-        return None
-    level, error = (1.0, 0.0) if exponent is None else (math.exp(exponent.before[-1]), float(exponent.at_error[-1]))
-    tail = Bounded(level, level * (1.01 * error + 16.0 * UNIT)).times(
-        1.0 / decay.value, 2.0 * decay.error / decay.value + 2.0 * UNIT
-    )
-    return worth + tail

@@ -33,6 +33,9 @@ EXP_ERROR = 8 * UNIT
 UNDERFLOW = 2.0**-1022
 """Smallest normal number: the most that one product can lose by gradual underflow (with room to spare)."""
 
+LARGEST_EXPONENT_ERROR = 0.1
+"""An exponent known less well than this has no useful bound: a plan that needs it is refused."""
+
 SAFETY = 1.0 + 1e-9
 """Covers the rounding committed in evaluating the bounds themselves (a few hundred operations on positive terms)."""
 
@@ -116,9 +119,12 @@ def truncation_bound(size: Floats, q: Floats, swing: Floats, lengths: Floats) ->
     grown = swing @ _ELLIPSE_POWERS[1 : swing.shape[-1] + 1]
     grown += q[..., None]
     grown += _LOG_SHRINK
+    beyond = grown > 709.0
     np.exp(np.minimum(grown, 709.0, out=grown), out=grown)
     with np.errstate(over="ignore"):
         bound = (size @ _ELLIPSE_POWERS[: size.shape[-1]]) * grown
+        if beyond.any():
+            bound = np.where(beyond & (bound > 0.0), np.inf, bound)
         return np.asarray(bound.min(axis=-1) * (lengths * (SAFETY / 2.0)))
 
 
@@ -143,11 +149,11 @@ def integrate(p: Floats, q: Floats, lengths: Floats, *, p_error: Floats, q_error
     size, swing = summed(sizes), summed(swings)
     truncation = truncation_bound(sizes, q[..., 0], swings, lengths)
     p_steps, q_steps = 3 * p.shape[-1], 3 * q.shape[-1]
-    # an error of up to 1e-3 in q is what the supported range allows at the very most: exp(x) − 1 ≤ 1.001·x
-    in_exponent = 1.001 * (UNIT * (np.abs(q[..., 0]) + (q_steps + 1) * swing) + q_error) + EXP_ERROR
+    # exp(x) − 1 ≤ 1.06·x for an error x of up to LARGEST_EXPONENT_ERROR in q
+    in_exponent = 1.06 * (UNIT * (np.abs(q[..., 0]) + (q_steps + 1) * swing) + q_error) + EXP_ERROR
     relative = in_exponent + UNIT * (p_steps + POINTS + 6)
     gross = mass * size
-    bound = gross * relative + mass * p_error + truncation
+    bound = gross * relative + 1.11 * mass * p_error + truncation
     mean = np.add.reduce(gross, axis=-1, keepdims=True) / gross.shape[-1]
     target = np.maximum(gross, mean)
     return Integral(

@@ -2,7 +2,7 @@
 
 A declared rate is a decimal figure under a compounding convention: the continuous rate is x itself, or m·ln(1 + x/m) for m
 conversions a year (1 + i = (1 + i^(m)/m)^m = e^δ). Sums and differences of such rates are kept symbolically as
-linear + Σ m·ln F_m with rational linear and F_m, and are evaluated once, to 60 digits. A rate that was measured along a path
+linear + Σ m·ln F_m with rational linear and F_m, and are evaluated once, to 100 digits. A rate that was measured along a path
 is known only in floating point and carries its error.
 """
 
@@ -21,8 +21,8 @@ CONVERSIONS = {"annual": 1, "semiannual": 2, "quarterly": 4, "monthly": 12, "dai
 
 COMPOUNDINGS = ("continuous", *CONVERSIONS)
 
-_DIGITS = Context(prec=60)
-_NEGLIGIBLE = Decimal("1e-45")
+_DIGITS = Context(prec=100)
+_NEGLIGIBLE = Decimal("1e-70")
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -139,7 +139,7 @@ class Rate:
                 return None
             product *= factor ** int(power)
         # ln of a rational other than 1 is irrational, so a tie needs both parts to vanish
-        return 0 if self.linear == 0 and product == 1 else None
+        return (product > 1) - (product < 1) if self.linear == 0 else None
 
 
 ZERO = Rate()

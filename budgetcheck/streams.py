@@ -17,7 +17,7 @@ from numpy.typing import NDArray
 
 from .bounded import Bounded
 from .exponents import Cut, Exponent, cut_pieces, padded
-from .quadrature import EXP_ERROR, SAFETY, UNIT, Floats, Integral, Mask, integrate, summed
+from .quadrature import EXP_ERROR, SAFETY, UNDERFLOW, UNIT, Floats, Integral, Mask, integrate, summed
 
 
 @dataclass(frozen=True, kw_only=True, eq=False)
@@ -46,8 +46,8 @@ class Lumps:
         """Amounts as they stand at each breakpoint and proved bounds, both (k, m + 1)."""
         grown = np.exp(self.exponent)
         values = self.amounts * grown
-        bounds = self.errors * grown + np.abs(values) * (1.01 * self.exponent_error + EXP_ERROR + 2.0 * UNIT)
-        return values, bounds * SAFETY
+        bounds = 1.11 * self.errors * grown + np.abs(values) * (1.06 * self.exponent_error + EXP_ERROR + 2.0 * UNIT)
+        return values, bounds * SAFETY + UNDERFLOW * (self.amounts != 0.0)
 
     def split(self, cut: Cut) -> Lumps:
         """The same sums on the finer mesh; between them nothing is paid, so the exponent there does not matter."""
@@ -90,14 +90,15 @@ class Tail:
         """The levels times exp(sign·E(T))."""
         total = self.exponent + sign * float(exponent.before[-1])
         error = (self.exponent_error + float(exponent.at_error[-1]) + UNIT * np.abs(total)) * SAFETY
-        return replace(self, exponent=total, exponent_error=error)
+        levels, errors, flows = self.levels, self.errors, self.flows
+        return Tail(levels=levels, errors=errors, flows=flows, exponent=total, exponent_error=error, period=self.period)
 
     def values(self) -> tuple[Floats, Floats]:
         """The levels at T and proved bounds, both (k,)."""
         grown = np.exp(self.exponent)
         values = self.levels * grown
-        bounds = self.errors * grown + np.abs(values) * (1.01 * self.exponent_error + EXP_ERROR + 2.0 * UNIT)
-        return values, bounds * SAFETY
+        bounds = 1.11 * self.errors * grown + np.abs(values) * (1.06 * self.exponent_error + EXP_ERROR + 2.0 * UNIT)
+        return values, bounds * SAFETY + UNDERFLOW * (self.levels != 0.0)
 
 
 @dataclass(frozen=True, kw_only=True, eq=False)
@@ -139,8 +140,9 @@ class Streams:
             return self
         width = max(self.q.shape[2], exponent.coefficients.shape[1])
         q = padded(self.q, width) + sign * padded(exponent.coefficients, width)[None]
-        return replace(
-            self,
+        return Streams(
+            p=self.p,
+            p_error=self.p_error,
             q=q,
             q_error=(self.q_error + exponent.error + UNIT * summed(np.abs(q))) * SAFETY,
             lumps=None if self.lumps is None else self.lumps.restated(exponent, sign),
@@ -199,9 +201,20 @@ class Streams:
         """Integrals of each stream over each interval, without lump sums and tail."""
         return integrate(self.p, self.q, lengths, p_error=self.p_error, q_error=self.q_error)
 
+    @property
+    def largest_exponent_error(self) -> float:
+        """Bound on the error of every exponent."""
+        errors = [float(self.q_error.max())]
+        if self.lumps is not None:
+            errors.append(float(self.lumps.exponent_error.max()))
+        if self.tail is not None:
+            errors.append(float(self.tail.exponent_error.max()))
+        return max(errors)
+
     def log_size(self, lengths: Floats) -> float:
         """|q| + max(0, ln(|p|·length)), the largest over intervals, lump sums and tails: what the supported range limits."""
-        amount = np.log(np.maximum(summed(np.abs(self.p)) * lengths, 1.0))
+        # products are formed before they are multiplied by a short length
+        amount = np.log(np.maximum(summed(np.abs(self.p)) * np.maximum(lengths, 1.0), 1.0))
         largest = float((summed(np.abs(self.q)) + amount).max())
         if self.lumps is not None:
             amount = np.log(np.maximum(np.abs(self.lumps.amounts), 1.0))

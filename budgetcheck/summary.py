@@ -6,8 +6,9 @@ import numpy as np
 
 from .assessment import Slack, Span, Tail
 from .bounded import Bounded
-from .budget import Account, Budget, PresentValue, Reach
+from .budget import Account, Budget, PresentValue, Reach, worth_of_one
 from .estimates import TailEstimate
+from .exponents import NO_DRIFT
 from .ledger import Ledger
 from .plan import Plan
 from .quadrature import WEIGHTS, at_nodes
@@ -40,7 +41,7 @@ def slack(computed: Budget, decision: Decision) -> Slack:
         per_effective_unit=unit.slack,
         per_household=household.slack,
         share_of_resources=_ratio(unit.slack.value, decision.scale),
-        consumption_scale=_ratio(available, consumed) if finite else None,
+        consumption_scale=_ratio(available, consumed) if finite and available >= 0.0 else None,
         level_per_year=_ratio(household.slack.value, annuity),
     )
 
@@ -54,17 +55,16 @@ def _ratio(part: float, whole: float | None) -> float | None:
 
 def _annuity(computed: Budget) -> float | None:
     """Present value of one unit of money a year, real, over the plan; None where a perpetual one has none."""
-    plan = computed.plan
-    interest = computed.household.discount
-    value = float(plan.mesh.lengths.sum())
-    if interest is not None:
-        value = float((np.exp(-at_nodes(interest.coefficients)) @ WEIGHTS) @ plan.mesh.lengths / 2.0)
-    if not plan.conventions.perpetual:
-        return value
+    plan, interest = computed.plan, computed.household.discount
     rate = plan.drifts.discounting.beyond
-    if rate.sign != 1:
-        return None
-    return value + float(np.exp(-interest.before[-1])) / rate.value if interest is not None else None
+    if interest is not None and float(np.abs(interest.coefficients[:, 1:]).sum(axis=1).max()) < 1.0:
+        # on intervals so short the rule's error is below rounding, and the exponent is there already
+        value = float((np.exp(-at_nodes(interest.coefficients)) @ WEIGHTS) @ plan.mesh.lengths / 2.0)
+        if not plan.conventions.perpetual:
+            return value
+        return value + float(np.exp(-interest.before[-1])) / rate.value if rate.sign == 1 else None
+    worth = worth_of_one(plan, NO_DRIFT - plan.drifts.discounting)
+    return None if worth is None else worth.value
 
 
 def tail(plan: Plan, account: Account, estimate: TailEstimate) -> Tail:

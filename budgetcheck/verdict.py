@@ -127,8 +127,7 @@ class _Case:
     def comparable(self) -> bool:
         """Whether the last figures of all columns have the same meaning, so that their sums can be compared."""
         items = [item for item in self.plan.items if item.last != 0]
-        meanings = {(item.basis, item.timing, item.quoted, item.nominal) for item in items}
-        return self.plan.long_run is not None or len(meanings) <= 1
+        return self.plan.long_run is not None or len({item.meaning for item in items}) <= 1
 
     def infinite(self, role: str) -> bool:
         """Whether a role's present value is, or may be, infinite; flows that cancel for ever do not count."""

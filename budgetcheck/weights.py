@@ -18,7 +18,8 @@ from .paths import Geometric, Linear, Step
 from .plan import LARGEST_EXPONENT, Factors, Item, Plan
 from .quadrature import NODES, WEIGHTS, Floats, at_nodes, summed
 from .rows import RATES
-from .wealth import WealthPath, trace_of
+from .trace import trace_of
+from .wealth import WealthPath
 
 
 @dataclass(frozen=True, kw_only=True, eq=False)
@@ -146,7 +147,7 @@ def _rate_weights(budget: Budget, path: WealthPath, name: str) -> Floats:
     else:
         whole = np.array([line.whole.value for line in budget.unit.account.lines])
         moved = plan.signs * signs
-        to_come = float(moved @ whole) - trace_of(budget, 0.0, moved, 0.0).at_nodes
+        to_come = float(moved @ whole) - trace_of(budget, 0.0, moved).at_nodes
     zero = name == "r" and plan.conventions.curve == "zero"
     if zero and not plan.conventions.periods:
         by_row = _zero_weights(budget)
@@ -165,19 +166,41 @@ def _rate_weights(budget: Budget, path: WealthPath, name: str) -> Floats:
 
 
 def _beyond(budget: Budget, name: str) -> float:
-    """The derivative of slack by the rate after the last row: of a/d, or of b/(e^{dh} − 1), by the decay d."""
+    """The derivative of slack by the rate after the last row, by the decay d of each tail.
+
+    Of a/d it is −tail/d. Of repeated periods of length h and present value b, Σ_j b·e^{−djh}: where the rate acts inside the
+    period too, −(tail·h + M)/(e^{dh} − 1), M the first moment of the discounted flow about the start of the last period; where
+    it only sets what one period is to the next, −tail·h/(1 − e^{−dh}).
+    """
     plan, moved = budget.plan, 0.0
     enters = {"r": 1.0, "hazard": 1.0, "g": -1.0, "n": -1.0, "inflation": -float(plan.conventions.market_nominal)}[name]
     tail = budget.unit.streams.tail
-    for item, line, decay in zip(plan.items, budget.unit.account.lines, plan.decays, strict=True):
+    for k, (item, line, decay) in enumerate(zip(plan.items, budget.unit.account.lines, plan.decays, strict=True)):
         if tail is None or decay.sign != 1:
             continue
-        by_decay = 1.0 / decay.value
+        value = line.tail.value
+        change = value / decay.value
         if tail.period is not None:
             x = min(decay.value * tail.period, LARGEST_EXPONENT)
-            by_decay = tail.period / -np.expm1(-x)
-        moved -= item.sign * enters * line.tail.value * by_decay
+            change = value * tail.period / -np.expm1(-x)
+            if _in_exponent(name, item, plan) == -enters:
+                change = (value * tail.period + _first_moment(budget, k)) / np.expm1(x)
+        moved -= item.sign * enters * change
     return moved
+
+
+def _first_moment(budget: Budget, k: int) -> float:
+    """∫ (t − t_0)·discounted flow of stream k over the last period, t_0 its start, lump sums too."""
+    plan, route = budget.plan, budget.unit
+    mesh = plan.mesh
+    last = np.flatnonzero(mesh.interval == mesh.interval[-1])
+    since = mesh.breaks[last] - mesh.breaks[last[0]]
+    t = since[:, None] + mesh.lengths[last, None] * (1.0 + NODES) / 2.0
+    moment = float(((route.integral.nodes[k, last] * t) @ WEIGHTS) @ mesh.lengths[last]) / 2.0
+    if route.streams.lumps is not None and plan.items[k].timing not in TOTALS:
+        at = int(route.streams.lumps.last[k])
+        moment += float(route.streams.lumps.values()[0][k, at]) * float(mesh.breaks[at] - mesh.breaks[last[0]])
+    return moment
 
 
 def _zero_weights(budget: Budget) -> Floats:

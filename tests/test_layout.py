@@ -44,6 +44,7 @@ ORDER = (
     "flows",
     "plan",
     "budget",
+    "trace",
     "wealth",
     "weights",
     "usual",

@@ -16,8 +16,8 @@ from ..carrying import RowShare
 from ..conditions import Condition
 from ..findings import Finding, Severity
 from ..text import visible
+from ..trace import Extreme
 from ..version import SCHEMA, VERSION
-from ..wealth import Extreme
 
 if TYPE_CHECKING:
     from ..flow import Flow
@@ -74,6 +74,7 @@ def render(assessment: Assessment) -> str:
                 "largest_debt": _extreme(a.wealth_path.per_household.largest_debt),
             },
             "first_negative": a.wealth_path.first_negative,
+            "until": a.wealth_path.until,
         },
         "tail": _tail(a),
         "carrying": _carrying(a),

@@ -4,6 +4,7 @@ assumptions with their origin, and the findings."""
 from __future__ import annotations
 
 import io
+import math
 from collections.abc import Iterable, Iterator, Sequence
 
 from rich.console import Console
@@ -214,7 +215,9 @@ def _conditions(a: Assessment) -> Iterator[tuple[str, str]]:
             yield name, f"{answers[condition.holds]}. {condition.sentence}"
     low = a.wealth_path.per_household.minimum
     lowest = f"lowest {significant(low.value)} per household at {a.date(low.t)}"
-    if a.wealth_path.per_household.largest_debt is None:
+    if not math.isfinite(low.error):
+        yield "Wealth", f"{lowest}, as far as the path between rows can be taken for known."
+    elif a.wealth_path.per_household.largest_debt is None:
         yield "Wealth", f"{lowest}; no debt before the end of the table's rows."
     else:
         first = a.wealth_path.first_negative
