@@ -19,8 +19,9 @@ class Severity(StrEnum):
 
 @dataclass(frozen=True, kw_only=True)
 class Finding:
-    """One thing found. row is the line number in the file, the header being 1; raw the text as it stands there; places: how
-    many places it speaks of, more than one where the rest of a long list is summed up."""
+    """One thing found. row is the line number in the file, the header being 1; cell the address in a workbook, such as C17; raw
+    the text as it stands there; places: how many places it speaks of, more than one where the rest of a long list is summed
+    up."""
 
     rule: str
     severity: Severity
@@ -28,6 +29,7 @@ class Finding:
     file: str | None = None
     row: int | None = None
     column: str | None = None
+    cell: str | None = None
     raw: str | None = None
     hint: str | None = None
     places: int = 1
@@ -36,7 +38,9 @@ class Finding:
     def place(self) -> str:
         """Where it is, as 'plan.csv, line 7, column wage' or 'plan.toml, line 3, key r'; empty where there is no place."""
         parts = [] if self.file is None else [visible(self.file)]
-        if self.row is not None:
+        if self.cell is not None:
+            parts.append(f"cell {visible(self.cell)}")
+        elif self.row is not None:
             parts.append(f"line {self.row}")
         if self.column is not None:
             parts.append(f"{'key' if (self.file or '').endswith('.toml') else 'column'} {quoted(self.column)}")

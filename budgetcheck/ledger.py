@@ -36,9 +36,9 @@ class LedgerColumn:
 
 @dataclass(frozen=True, eq=False)
 class Ledger:
-    """timeline and columns of one table; lines (n,) are line numbers in the file. With a stop among its findings the ledger
-    only serves to find more: cells without a figure are NaN, and timeline, or even time_kind ("t", "date" and so on), may be
-    None."""
+    """timeline and columns of one table, which is kept as it was read; lines (n,) are line numbers in the file. With a stop
+    among its findings the ledger only serves to find more: cells without a figure are NaN, and timeline, or even time_kind
+    ("t", "date" and so on), may be None."""
 
     file: str
     sha256: str
@@ -47,6 +47,7 @@ class Ledger:
     columns: tuple[LedgerColumn, ...]
     lines: tuple[int, ...]
     findings: tuple[Finding, ...]
+    table: Table
 
     def of_role(self, role: str) -> tuple[LedgerColumn, ...]:
         """The columns of that role, in the table's order."""
@@ -80,6 +81,7 @@ def keep(table: Table, assumptions: Assumptions) -> Ledger:
         columns=tuple(columns),
         lines=table.lines,
         findings=(*table.findings, *findings),
+        table=table,
     )
 
 

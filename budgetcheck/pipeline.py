@@ -166,7 +166,7 @@ def _assessed(taken: Intake, tailed: _Tailed, found: list[Finding]) -> Assessmen
         preferences=preferred,
         tail=tail_of(plan, unit, open_tail),
         assumptions=plan.conventions.entries,
-        findings=worst_first(found),
+        findings=worst_first(ledger.table.addressed(found)),
         lines=ledger.lines,
         times=plan.rows.timeline.times,
         date=plan.rows.timeline.date,

@@ -10,7 +10,8 @@ import csv
 import hashlib
 import io
 import sys
-from dataclasses import dataclass
+from collections.abc import Iterable
+from dataclasses import dataclass, replace
 from datetime import datetime, time
 from decimal import Decimal
 from pathlib import Path
@@ -36,18 +37,20 @@ STANDARD_INPUT = "-"
 
 @dataclass(frozen=True, eq=False)
 class Column:
-    """One column: its header as it stands, and either text cells or numbers (from a DataFrame, exact as they are)."""
+    """One column: its header as it stands, and either text cells or numbers (from a DataFrame, exact as they are); letter: of
+    the column in a workbook."""
 
     header: str
     cells: tuple[str, ...] | None
     numbers: Floats | None = None
+    letter: str | None = None
 
 
 @dataclass(frozen=True, eq=False)
 class Table:
     """file: the name to show; columns; lines (n,): the physical line of each row; sha256 of the input; ragged: rows of
     another width than the header, which are left out; findings: faults of structure, with which the rows that are sound can
-    still be read for more."""
+    still be read for more; separator: between the cells of a text file; decided: what was decided in reading it, in words."""
 
     file: str
     columns: tuple[Column, ...]
@@ -55,6 +58,18 @@ class Table:
     sha256: str
     ragged: int = 0
     findings: tuple[Finding, ...] = ()
+    separator: str | None = None
+    decided: tuple[str, ...] = ()
+
+    def addressed(self, findings: Iterable[Finding]) -> tuple[Finding, ...]:
+        """The findings with the address of their cell, for a workbook."""
+        letters = {column.header: column.letter for column in self.columns if column.letter is not None}
+        return tuple(
+            replace(found, cell=f"{letters[found.column]}{found.row}")
+            if found.cell is None and found.row is not None and found.column in letters and found.file == self.file
+            else found
+            for found in findings
+        )
 
 
 def read_csv(source: str | Path) -> Table:

@@ -1,0 +1,1 @@
+"""The rules of the audit, by what they speak of."""
